@@ -1,0 +1,1 @@
+//! Series, labels and marks to PNG and SVG bytes.

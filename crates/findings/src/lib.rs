@@ -1,0 +1,1 @@
+//! Peaks, verdicts and comparisons drawn from averages.

@@ -1,0 +1,1 @@
+//! Angle grids and the averages fed from them.

@@ -1,0 +1,1 @@
+//! Recordings read by position, and encoders for WAV, CSV and NPY.

@@ -1,0 +1,1 @@
+//! Results to figures, tables and findings, written whole or not at all.

@@ -1,0 +1,1 @@
+//! Run file, settings and the engine.

@@ -1,0 +1,2 @@
+//! The `shaftwise` program.
+fn main() {}
