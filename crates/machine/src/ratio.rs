@@ -54,7 +54,10 @@ impl Ratio {
             return Err(RatioError::Zero { turns, per });
         }
         let common = gcd(turns, per);
-        Ok(Self { turns: turns / common, per: per / common })
+        Ok(Self {
+            turns: turns / common,
+            per: per / common,
+        })
     }
 
     /// Reads `A/B` or `A`.
@@ -62,7 +65,9 @@ impl Ratio {
     /// # Errors
     /// [`RatioError::Text`] when the text is something else, [`RatioError::Zero`] for a zero.
     pub fn parse(text: &str) -> Result<Self, RatioError> {
-        let wrong = || RatioError::Text { found: text.to_owned() };
+        let wrong = || RatioError::Text {
+            found: text.to_owned(),
+        };
         let (turns, per) = text.split_once('/').unwrap_or((text, "1"));
         let turns = turns.trim().parse().map_err(|_| wrong())?;
         let per = per.trim().parse().map_err(|_| wrong())?;
@@ -95,10 +100,17 @@ impl Ratio {
         // Cross-cancel first: the product of reduced fractions is then already reduced.
         let a = gcd(self.turns, next.per);
         let b = gcd(next.turns, self.per);
-        let too_large = || RatioError::TooLarge { left: self, right: next };
+        let too_large = || RatioError::TooLarge {
+            left: self,
+            right: next,
+        };
         Ok(Self {
-            turns: (self.turns / a).checked_mul(next.turns / b).ok_or_else(too_large)?,
-            per: (self.per / b).checked_mul(next.per / a).ok_or_else(too_large)?,
+            turns: (self.turns / a)
+                .checked_mul(next.turns / b)
+                .ok_or_else(too_large)?,
+            per: (self.per / b)
+                .checked_mul(next.per / a)
+                .ok_or_else(too_large)?,
         })
     }
 }
