@@ -1,8 +1,8 @@
 //! Random machines for tests against planted truth.
 
 use crate::{
-    Channel, Edge, EdgeShape, Generator, Hunting, Knot, Noise, Order, Profile, PulseTrain, Recipe,
-    Speed, Tone, Width, Wobble,
+    Channel, Converter, Edge, EdgeShape, Generator, Hunting, Knot, Noise, Order, Profile,
+    PulseTrain, Recipe, Speed, Tone, Width, Wobble,
 };
 
 /// How hard a random machine is to analyse.
@@ -14,14 +14,16 @@ pub enum Difficulty {
     Usual,
     /// Biased towards what breaks methods: wide or fast speed changes, close pairs of orders,
     /// orders that nearly meet tones, amplitudes over four decades, large bias, narrow pulses,
-    /// noisy coarse tach.
+    /// a tach with noise, hum, drift and a 10-bit converter.
     Hard,
 }
 
-/// A random machine: channels 0 and 1 are accelerometers with 3 to 8 orders each, channel 2 is a
-/// tach. Orders stay below 0.35 × rate / highest speed, are at least 0.5 apart (hard: 0.25), and
-/// below 10 kHz the rate is 5.12, 8.192 or 10 kHz; the length is 6 to 12 s. The recipe is plain
-/// data: change or lengthen it as a test needs.
+/// A random machine: channels 0 and 1 are accelerometers with the same 3 to 8 orders at amplitudes
+/// and phases of their own, channel 2 is a tach with one pulse per revolution.
+///
+/// The rate is 5.12, 8.192 or 10 kHz, the length 6 to 12 s, the mean speed 12 to 60 rev/s. Orders
+/// stay at or below 0.35 · rate / highest speed and are at least 0.5 apart (hard: 0.25). The recipe
+/// is plain data: change or lengthen it as a test needs.
 #[must_use]
 pub fn random_machine(seed: u64, difficulty: Difficulty) -> Recipe {
     let mut generator = Generator::new(seed).fork(0x6d61_6368);
@@ -106,11 +108,11 @@ fn random_speed(generator: &mut Generator, difficulty: Difficulty, seconds: f64)
         }
         1 => {
             speed.hunting = Some(Hunting {
-                // 24 sines peak at about 2.5 rms
+                // 12 sines peak at about 2.5 rms
                 rms_rev_per_s: mean * spread / 2.5,
                 slowest_hz: 0.05,
                 fastest_hz: generator.uniform(0.3, 1.0),
-                sines: 24,
+                sines: 12,
             });
         }
         2 => {
@@ -246,6 +248,10 @@ fn random_tach(generator: &mut Generator, difficulty: Difficulty, fastest: f64) 
         });
     }
     if hard {
+        tach.converter = Some(Converter {
+            bits: 10,
+            full_scale: 20.0,
+        });
         tach.drift_per_s = 0.02 * high * generator.uniform(-1.0, 1.0);
         tach.tones.push(Tone::new(
             50.0,

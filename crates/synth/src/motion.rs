@@ -119,7 +119,7 @@ impl Motion {
         for _ in 0..200 {
             let miss = angle.since(self.angle(time));
             let step = miss / self.speed(time);
-            if !(miss.abs() < last_miss) && step.abs() < 1e-12 {
+            if miss.abs() >= last_miss && step.abs() < 1e-12 {
                 // down at rounding: no further gain
                 break;
             }

@@ -42,8 +42,8 @@ impl Filter {
                 bandwidth_hz,
                 ..
             } => {
-                let (sin, cos) = (TAU * center_hz / rate_hz).sin_cos();
-                let alpha = 0.5 * sin * bandwidth_hz / center_hz;
+                let cos = (TAU * center_hz / rate_hz).cos();
+                let alpha = (0.5 * TAU * bandwidth_hz / rate_hz).tan();
                 let [a0, a1, a2] = [1.0 + alpha, -2.0 * cos, 1.0 - alpha];
                 ([alpha / a0, 0.0, -alpha / a0], [a1 / a0, a2 / a0])
             }
@@ -222,10 +222,12 @@ mod tests {
         // by definition of the Butterworth corner under the bilinear transform
         let ratio = low.density(300.0, RATE) / low.density(0.0, RATE);
         assert!((ratio - 0.5).abs() < 1e-12);
-        let peak = band.density(900.0, RATE);
-        for side in [850.0, 950.0] {
-            // symmetric in tan(πf/rate), so only nearly so in f: 5 % of the bandwidth
-            assert!((band.density(side, RATE) / peak - 0.5).abs() < 0.05);
+        // the −3 dB points of a digital resonator lie at m ± Δ/2, cos m = cos ω₀ · cos Δ/2
+        let half_width = TAU * 50.0 / RATE;
+        let middle = ((TAU * 900.0 / RATE).cos() * half_width.cos()).acos();
+        for side in [middle - half_width, middle + half_width] {
+            let ratio = band.density(side / TAU * RATE, RATE) / band.density(900.0, RATE);
+            assert!((ratio - 0.5).abs() < 1e-12);
         }
     }
 

@@ -79,10 +79,10 @@ impl PulseSource {
         // a cell is short: its middle is near enough for Newton to end in two or three steps
         let guess = turning.times[CELL / 2];
         for number in self.numbers(first, last) {
-            if self.is_lost(number) {
+            let angle = self.pulse_angle(number);
+            if angle < first || angle > last || self.is_lost(number) {
                 continue;
             }
-            let angle = self.pulse_angle(number);
             self.add_pulse(
                 motion,
                 turning,

@@ -240,7 +240,7 @@ pub enum Noise {
         /// Rms, unit, >= 0.
         rms: f64,
     },
-    /// y[n] = a·y[n−1] + w[n], a = e^(−2π·corner/rate).
+    /// y(n) = a·y(n−1) + w(n), a = e^(−2π·corner/rate).
     OnePole {
         /// Rms, unit, >= 0.
         rms: f64,
@@ -254,7 +254,8 @@ pub enum Noise {
         /// Corner (−3 dB), Hz.
         corner_hz: f64,
     },
-    /// Two-pole band-pass by the bilinear transform, Q = centre / bandwidth.
+    /// Two-pole band-pass with zeros at 0 and half the rate; the peak lies at the centre, the
+    /// −3 dB points the bandwidth apart.
     BandPass {
         /// Rms, unit, >= 0.
         rms: f64,

@@ -9,7 +9,7 @@ use crate::{Error, Exact, Generator, Motion, Recipe, TachTruth, Truth};
 /// Renders a recipe. Memory does not depend on the length (but for the list of stray pulses).
 ///
 /// Samples come in cells of fixed place; a block is cut from them. So any split gives the same
-/// bits, and [`Synth::seek`] goes anywhere at no cost, also past the recording's end.
+/// bits, and [`Synth::seek`] goes anywhere without rendering what lies between.
 #[derive(Debug, Clone)]
 pub struct Synth {
     recipe: Recipe,

@@ -13,6 +13,34 @@ type Check = Result<(), Error>;
 impl Recipe {
     /// Reads a recipe from JSON and validates it.
     ///
+    /// ```
+    /// let recipe = shaftwise_synth::Recipe::parse(r#"{
+    ///     "sample_rate_hz": 5120, "seconds": 10, "seed": 7,
+    ///     "speed": {
+    ///         "profile": {"constant": {"rev_per_s": 24.6}},
+    ///         "hunting": {"rms_rev_per_s": 0.3, "slowest_hz": 0.03, "fastest_hz": 0.5}
+    ///     },
+    ///     "channels": [
+    ///         {
+    ///             "name": "drive end", "quantity": "acceleration", "unit": "m/s²",
+    ///             "orders": [{"order": 6, "amplitude": 2.4, "phase_lead_deg": 75}],
+    ///             "tones": [{"frequency_hz": 100, "amplitude": 0.4}],
+    ///             "noise": [{"white": {"rms": 0.2}}]
+    ///         },
+    ///         {
+    ///             "name": "tach", "quantity": "voltage", "unit": "V",
+    ///             "pulses": {
+    ///                 "pulses_per_rev": 1, "width": {"degrees": 20}, "edge": {"seconds": 0.0008},
+    ///                 "faults": {"missing_fraction": 0.03, "strays_per_s": 0.4}
+    ///             },
+    ///             "converter": {"bits": 12, "full_scale": 10}
+    ///         }
+    ///     ]
+    /// }"#)?;
+    /// assert_eq!(recipe.frames(), 51_200);
+    /// # Ok::<(), shaftwise_synth::Error>(())
+    /// ```
+    ///
     /// # Errors
     /// [`Error::Syntax`] with line and column if the text is no JSON, has an unknown key, lacks one
     /// or has a value of the wrong type; [`Error::Value`] if a value is out of range.
@@ -62,7 +90,7 @@ impl Recipe {
         }
         self.speed.validate()?;
         let [slowest, fastest] = speed_bounds(self);
-        if !(slowest > 0.0) || !(fastest <= 1e5) {
+        if !(slowest > 0.0 && fastest <= 1e5) {
             return wrong(
                 "speed",
                 format!("{slowest} to {fastest}"),
@@ -116,7 +144,7 @@ impl Speed {
                         "rev/s",
                     )?;
                     between(&format!("{path}.at_s"), knot.at_s, -1e7, 1e7, "s")?;
-                    if index > 0 && !(knot.at_s > knots[index - 1].at_s) {
+                    if index > 0 && knot.at_s <= knots[index - 1].at_s {
                         return wrong(
                             &format!("{path}.at_s"),
                             knot.at_s,
