@@ -15,15 +15,7 @@ fn main() -> Result<(), Box<dyn error::Error>> {
     let directory = env::args().nth(1).unwrap_or_else(|| ".".to_owned());
     let directory = Path::new(&directory);
     fs::create_dir_all(directory)?;
-    let figures = [
-        ("speed", speed()),
-        ("order-spectrum", order_spectrum()),
-        ("compare", compare()),
-        ("synchronous-average", synchronous_average()),
-        ("convergence", convergence()),
-        ("order-traces", order_traces()),
-    ];
-    for (name, figure) in figures {
+    for (name, figure) in figures() {
         fs::write(
             directory.join(name).with_extension("png"),
             render(&figure, &RenderOptions::default())?,
@@ -42,6 +34,18 @@ fn main() -> Result<(), Box<dyn error::Error>> {
         render(&slide, &RenderOptions { dpi: 150.0 })?,
     )?;
     Ok(())
+}
+
+/// All figures of the gallery, by file name.
+pub fn figures() -> [(&'static str, Figure); 6] {
+    [
+        ("speed", speed()),
+        ("order-spectrum", order_spectrum()),
+        ("compare", compare()),
+        ("synchronous-average", synchronous_average()),
+        ("convergence", convergence()),
+        ("order-traces", order_traces()),
+    ]
 }
 
 fn steps(from: f64, to: f64, count: u32) -> Vec<f64> {
@@ -371,7 +375,7 @@ fn convergence() -> Figure {
         )
     });
     panel.series.push(Series::line(
-        "1/√N law, 10·log10 N",
+        "1/√N law, 10·log₁₀ N",
         Role::Reference,
         counts,
         law,

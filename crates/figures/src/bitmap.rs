@@ -69,7 +69,7 @@ fn encode(pixmap: &Pixmap, dpi: f64, title: &str) -> Result<Vec<u8>, Error> {
     let mut encoder = Encoder::new(&mut out, pixmap.width(), pixmap.height());
     encoder.set_color(ColorType::Rgb);
     encoder.set_depth(BitDepth::Eight);
-    encoder.set_compression(Compression::Fast);
+    encoder.set_compression(Compression::Balanced);
     encoder.set_filter(Filter::Adaptive);
     let per_metre = (dpi / 0.0254).round() as u32;
     encoder.set_pixel_dims(Some(PixelDimensions {

@@ -242,7 +242,8 @@ pub struct Marks {
 }
 
 /// Text at a point, moved aside where it would cover other text and then tied
-/// to its point by a thin line. Labels that find no place are left out; the
+/// to its point by a thin line. Where the whole text finds no place, the part
+/// before ` · ` is tried; where that finds none, the label is left out. The
 /// first of the list get theirs first.
 #[derive(Debug, Clone, PartialEq, Default)]
 pub struct PeakLabel {

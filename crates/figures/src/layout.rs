@@ -77,7 +77,7 @@ pub(crate) fn lay_out<'f>(
         top += title.len() as f64 * TITLE_PITCH;
     }
     if !subtitle.is_empty() {
-        top += subtitle.len() as f64 * SUBTITLE_PITCH + 2.0;
+        top += subtitle.len() as f64 * SUBTITLE_PITCH + 8.0;
     }
     let foot_height = if foot.is_empty() {
         0.0
@@ -121,7 +121,7 @@ pub(crate) fn lay_out<'f>(
         draft.height = (bottom - top - fixed) * draft.panel.height_share / shares;
         draft.top = at + head_height(draft.rows);
         at = draft.top + draft.height + foot_height_of(numbered, draft.x_label.len()) + 14.0;
-        if !(draft.height >= LEAST_PLOT) {
+        if draft.height < LEAST_PLOT {
             return Err(Error::Room {
                 panel: i + 1,
                 width: text_width,
@@ -159,7 +159,7 @@ pub(crate) fn lay_out<'f>(
             right = right.min(width - 12.0 - 0.5 * x_fonts(&tick.label));
         }
     }
-    if !(right - left >= LEAST_PLOT) {
+    if right - left < LEAST_PLOT {
         return Err(Error::Room {
             panel: 1,
             width: right - left,
@@ -167,6 +167,7 @@ pub(crate) fn lay_out<'f>(
         });
     }
 
+    let inset_ranges = inset_ranges(figure)?;
     let mut plots = Vec::new();
     for (i, (draft, y)) in drafts.into_iter().zip(y_maps).enumerate() {
         let frame = Box2::new(left, draft.top, right, draft.top + draft.height);
@@ -182,6 +183,7 @@ pub(crate) fn lay_out<'f>(
             y_label: draft.y_label,
             legend: place_legend(draft.legend, fonts, right),
             head_rows: draft.rows,
+            inset_y: inset_ranges[i],
         });
     }
     Ok(Sheet {
@@ -195,24 +197,21 @@ pub(crate) fn lay_out<'f>(
     })
 }
 
-/// The panel's axes for a magnified detail.
+/// The panel's axes for a magnified detail, if its place has room for them.
 pub(crate) fn detail<'f>(
     plot: &Plot<'f>,
     x: (f64, f64),
-    y: Option<(f64, f64)>,
     place: Box2,
     fonts: &Fonts,
-) -> Result<Plot<'f>, Error> {
+) -> Option<Plot<'f>> {
     let panel = plot.panel;
-    let axis = Axis {
-        range: y,
-        ..panel.y.clone()
-    };
-    let range = Extent::of_y(panel, x).range(&axis, (0.06, 0.08))?;
     let extent = |text: &str| fonts.width(text, INSET_NUMBER, false);
     let top = place.top + 12.0;
     let bottom = place.bottom - 27.0;
-    let y = y_map(&axis, range, top, bottom, INSET_NUMBER);
+    if bottom - top < 0.5 * LEAST_PLOT {
+        return None;
+    }
+    let y = y_map(&panel.y, plot.inset_y, top, bottom, INSET_NUMBER);
     let number_width = y
         .division
         .major
@@ -221,7 +220,7 @@ pub(crate) fn detail<'f>(
         .fold(0.0, f64::max);
     let left = place.left + 8.0 + number_width + 8.0;
     let right = place.right - 16.0;
-    Ok(Plot {
+    (right - left >= LEAST_PLOT).then(|| Plot {
         panel,
         frame: Box2::new(left, top, right, bottom),
         x: x_map(&panel.x, x, left, right, INSET_NUMBER, &extent),
@@ -232,6 +231,7 @@ pub(crate) fn detail<'f>(
         y_label: Vec::new(),
         legend: Vec::new(),
         head_rows: 0,
+        inset_y: plot.inset_y,
     })
 }
 
@@ -413,6 +413,31 @@ fn y_ranges(figure: &Figure, drafts: &mut [Draft<'_>]) -> Result<Vec<(f64, f64)>
         .zip(pads)
         .map(|((d, e), pad)| e.range(&d.y_axis, pad))
         .collect()
+}
+
+/// What each panel's inset shows of its y axis; one stretch for all where the
+/// panels share theirs, so that details can be compared as well.
+fn inset_ranges(figure: &Figure) -> Result<Vec<(f64, f64)>, Error> {
+    let extent = |panel: &Panel| {
+        panel
+            .inset
+            .as_ref()
+            .map_or(Extent::NONE, |i| Extent::of_y(panel, i.x))
+    };
+    let all = figure
+        .panels
+        .iter()
+        .map(extent)
+        .fold(Extent::NONE, Extent::with);
+    let range = |panel: &Panel| {
+        let axis = Axis {
+            range: panel.inset.as_ref().and_then(|i| i.y),
+            ..panel.y.clone()
+        };
+        let seen = if figure.shared_y { all } else { extent(panel) };
+        seen.range(&axis, (0.06, 0.08))
+    };
+    figure.panels.iter().map(range).collect()
 }
 
 /// Refuses what cannot be drawn, before anything is measured.

@@ -5,7 +5,7 @@ const CELL: f64 = 4.0;
 /// Least distance between two pieces of text.
 const APART: f64 = 5.0;
 /// Share of a label's cells that may lie over data.
-const TOLERATED: f64 = 0.06;
+const TOLERATED: f64 = 0.02;
 
 /// Finds free places for text inside a plot.
 pub(crate) struct Placer {
@@ -90,7 +90,7 @@ impl Placer {
     pub(crate) fn note(&mut self, places: &[Box2], tolerated: f64) -> Option<Box2> {
         let mut best: Option<(f64, Box2)> = None;
         for place in places.iter().filter(|p| self.free(p)) {
-            let cost = self.covered(&place.grown(2.0));
+            let cost = self.covered(&place.grown(3.0));
             if cost <= tolerated && best.is_none_or(|(least, _)| cost < least) {
                 best = Some((cost, *place));
             }
@@ -100,10 +100,17 @@ impl Placer {
         Some(place)
     }
 
-    /// A place near a point for a label of the given size: straight above it
-    /// if that is free, else the cheapest in distance, in data covered by the
-    /// label and in data crossed by its leader.
-    pub(crate) fn label(&mut self, at: Point, width: f64, height: f64) -> Option<Placed> {
+    /// A place near a point for a label of the given size: straight above its
+    /// crest (the point itself, or the tip of a band around it) if that is
+    /// free, else the cheapest in distance, in data covered by the label and
+    /// in data crossed by its leader.
+    pub(crate) fn label(
+        &mut self,
+        at: Point,
+        crest: f64,
+        width: f64,
+        height: f64,
+    ) -> Option<Placed> {
         let mut best: Option<(f64, Placed)> = None;
         let mut weigh = |left: f64, bottom: f64| {
             let place = Box2::new(left, bottom - height, left + width, bottom);
@@ -113,15 +120,20 @@ impl Placer {
             }
             let end = (
                 at.0.clamp(place.left, place.right),
-                at.1.clamp(place.top - 3.0, place.bottom + 3.0),
+                if place.top < crest {
+                    place.bottom + 3.0
+                } else {
+                    at.1.clamp(place.top, place.bottom)
+                },
             );
-            let distance = (end.0 - at.0).hypot(end.1 - at.1);
-            let leader = (distance > 8.0).then_some((at, end));
+            let whole = (end.0 - at.0).hypot(end.1 - at.1);
+            let distance = (end.0 - at.0).hypot(end.1 - at.1.min(end.1.max(crest)));
+            let leader = (distance > 9.0).then_some((at, end));
             let mut cost = distance + 0.15 * (left + 0.5 * width - at.0).abs() + 400.0 * covered;
             if let Some((a, b)) = leader {
                 let near = (
-                    a.0 + 6.0 * (b.0 - a.0) / distance,
-                    a.1 + 6.0 * (b.1 - a.1) / distance,
+                    a.0 + 6.0 * (b.0 - a.0) / whole,
+                    a.1 + 6.0 * (b.1 - a.1) / whole,
                 );
                 if self
                     .taken
@@ -138,8 +150,10 @@ impl Placer {
             }
         };
         for level in 0..14 {
-            let bottom = at.1 - 8.0 - 11.0 * f64::from(level);
-            for step in [0.0, 0.25, -0.25, 0.5, -0.5, 0.62, -0.62, 0.85, -0.85] {
+            let bottom = crest - 8.0 - 11.0 * f64::from(level);
+            for step in [
+                0.0, 0.25, -0.25, 0.5, -0.5, 0.62, -0.62, 0.85, -0.85, 1.1, -1.1,
+            ] {
                 weigh(at.0 - 0.5 * width + step * width, bottom);
             }
         }
@@ -183,7 +197,7 @@ mod tests {
         let mut placed = Vec::new();
         for i in 0..60 {
             let at = (f64::from(i) * 10.0 + 3.0, 250.0 - f64::from(i % 7) * 20.0);
-            placed.extend(placer.label(at, 110.0, 12.0));
+            placed.extend(placer.label(at, at.1, 110.0, 12.0));
         }
         assert!(placed.len() > 10, "{}", placed.len());
         for (i, a) in placed.iter().enumerate() {
@@ -200,7 +214,7 @@ mod tests {
     #[test]
     fn the_first_label_gets_the_place_above_its_point() {
         let mut placer = Placer::new(Box2::new(0.0, 0.0, 600.0, 300.0));
-        let placed = placer.label((300.0, 200.0), 100.0, 12.0);
+        let placed = placer.label((300.0, 200.0), 200.0, 100.0, 12.0);
         let place = Box2::new(250.0, 180.0, 350.0, 192.0);
         assert_eq!(
             placed,
@@ -218,6 +232,6 @@ mod tests {
             let y = f64::from(y) * 4.0 + 2.0;
             placer.ink(&[(0.0, y), (100.0, y)]);
         }
-        assert_eq!(placer.label((50.0, 50.0), 60.0, 12.0), None);
+        assert_eq!(placer.label((50.0, 50.0), 50.0, 60.0, 12.0), None);
     }
 }

@@ -37,6 +37,8 @@ pub(crate) struct Plot<'f> {
     pub(crate) legend: LegendRows<'f>,
     /// Rows of heading and legend above the frame.
     pub(crate) head_rows: usize,
+    /// The stretch of the y axis its inset shows.
+    pub(crate) inset_y: (f64, f64),
 }
 
 /// What a legend entry stands for.
@@ -50,6 +52,7 @@ pub(crate) enum Key<'f> {
 impl Key<'_> {
     const SAMPLE: f64 = 30.0;
     const GAP: f64 = 8.0;
+    const MOST: f64 = 440.0;
     /// Between two entries.
     pub(crate) const AIR: f64 = 26.0;
 
@@ -61,6 +64,13 @@ impl Key<'_> {
         }
     }
 
+    /// The name, cut where it would take the row to itself.
+    fn shown(&self, fonts: &Fonts) -> String {
+        fonts
+            .wrap(self.name(), LABEL, false, Self::MOST, 1)
+            .concat()
+    }
+
     fn sample(&self) -> f64 {
         if matches!(self, Self::Marks(_)) {
             12.0
@@ -70,7 +80,7 @@ impl Key<'_> {
     }
 
     pub(crate) fn width(&self, fonts: &Fonts) -> f64 {
-        self.sample() + Self::GAP + fonts.width(self.name(), LABEL, false) + Self::AIR
+        self.sample() + Self::GAP + fonts.width(&self.shown(fonts), LABEL, false) + Self::AIR
     }
 }
 
@@ -98,8 +108,9 @@ pub(crate) fn draw<DB: DrawingBackend>(
     words(canvas, plot, label_x)?;
     if let Some(inset) = &plot.panel.inset {
         let place = inset_place(plot, inset.place, inset.share, &placer);
-        let part = detail(plot, inset.x, inset.y, place, canvas.fonts)?;
-        magnified(canvas, plot, &part, place, &mut placer)?;
+        if let Some(part) = detail(plot, inset.x, place, canvas.fonts) {
+            magnified(canvas, plot, &part, place, &mut placer)?;
+        }
     }
     notes(canvas, plot, &mut placer)?;
     labels(canvas, plot, &mut placer)
@@ -111,10 +122,10 @@ fn contents<DB: DrawingBackend>(
     plot: &Plot<'_>,
     placer: &mut Placer,
 ) -> Result<(), Error> {
-    spans(canvas, plot)?;
     mesh(canvas, plot)?;
+    spans(canvas, plot)?;
     for band in &plot.panel.bands {
-        draw_band(canvas, plot, band)?;
+        draw_band(canvas, plot, band, placer)?;
     }
     for rule in &plot.panel.rules {
         let ends = match rule.way {
@@ -237,6 +248,7 @@ fn draw_band<DB: DrawingBackend>(
     canvas: &Canvas<'_, DB>,
     plot: &Plot<'_>,
     band: &Band,
+    placer: &mut Placer,
 ) -> Result<(), Error> {
     let colour = palette::stroke(band.role).colour;
     let alpha = band_alpha(band);
@@ -253,8 +265,13 @@ fn draw_band<DB: DrawingBackend>(
         runs(finite)
     };
     for (lower, upper) in edge(&band.lower).iter().zip(&edge(&band.upper)) {
-        let mut outline = thin(upper, COLUMN);
-        outline.extend(thin(lower, COLUMN).into_iter().rev());
+        let (mut outline, lower) = (thin(upper, COLUMN), thin(lower, COLUMN));
+        for edge in [&outline, &lower] {
+            clip(edge, &plot.frame)
+                .iter()
+                .for_each(|part| placer.ink(part));
+        }
+        outline.extend(lower.into_iter().rev());
         canvas.polygon(&clip_polygon(outline, &plot.frame), colour, alpha)?;
     }
     Ok(())
@@ -467,7 +484,11 @@ fn words<DB: DrawingBackend>(
             bold: true,
             ..Lettering::new(HEADING, INK, HPos::Left, VPos::Center)
         };
-        canvas.text(&plot.panel.heading, (left, row(0)), lettering)?;
+        let heading = canvas
+            .fonts
+            .wrap(&plot.panel.heading, HEADING, true, right - left, 1)
+            .concat();
+        canvas.text(&heading, (left, row(0)), lettering)?;
     }
     for (i, entries) in plot.legend.iter().enumerate() {
         for (x, key) in entries {
@@ -523,7 +544,7 @@ fn legend_entry<DB: DrawingBackend>(
         }
     }
     let lettering = Lettering::new(LABEL, INK, HPos::Left, VPos::Center);
-    canvas.text(key.name(), (end + Key::GAP, y), lettering)
+    canvas.text(&key.shown(canvas.fonts), (end + Key::GAP, y), lettering)
 }
 
 /// Words beside rules and in spans, and a word where there is no data.
@@ -548,8 +569,8 @@ fn notes<DB: DrawingBackend>(
                 let y = plot.y.place(rule.at);
                 for share in [1.0, 0.0, 0.75, 0.5, 0.25] {
                     let x = left + 8.0 + share * (right - left - wide - 14.0);
-                    places.push(place(x, y - high - 7.0));
-                    places.push(place(x, y + 7.0));
+                    places.push(place(x, y - high - 9.0));
+                    places.push(place(x, y + 9.0));
                 }
             }
             RuleWay::Upright => {
@@ -640,18 +661,38 @@ fn labels<DB: DrawingBackend>(
         if !plot.frame.contains(at) || label.text.is_empty() {
             continue;
         }
-        let wide = canvas.fonts.width(&label.text, LABEL, false);
-        let Some(placed) = placer.label(at, wide, cap_height(LABEL)) else {
-            continue;
+        let tips = plot.panel.bands.iter().filter_map(|b| tip(b, label.x));
+        let crest = tips
+            .map(|tip| plot.y.place(tip))
+            .filter(|y| *y > plot.frame.top)
+            .fold(at.1, f64::min);
+        let mut place = |text: &str| {
+            let wide = canvas.fonts.width(text, LABEL, false);
+            placer.label(at, crest, wide, cap_height(LABEL))
         };
+        let mut text = label.text.as_str();
+        let mut placed = place(text);
+        if let (None, Some((head, _))) = (placed, text.split_once(" · ")) {
+            text = head;
+            placed = place(text);
+        }
+        let Some(placed) = placed else { continue };
         if let Some((from, to)) = placed.leader {
             canvas.line(&[from, to], SOFT_INK, 0.8)?;
         }
         let colour = palette::text(label.role);
         canvas.disc(at, 2.6, colour)?;
-        covered_text(canvas, &label.text, placed.place, colour, placer)?;
+        covered_text(canvas, text, placed.place, colour, placer)?;
     }
     Ok(())
+}
+
+/// Upper edge of a band at an abscissa.
+fn tip(band: &Band, x: f64) -> Option<f64> {
+    let after = band.x.partition_point(|&b| b < x);
+    let near = after.saturating_sub(1)..(after + 2).min(band.x.len());
+    let closest = near.min_by(|&i, &j| (band.x[i] - x).abs().total_cmp(&(band.x[j] - x).abs()))?;
+    Some(band.upper[closest])
 }
 
 fn inset_place(plot: &Plot<'_>, wish: InsetPlace, share: (f64, f64), placer: &Placer) -> Box2 {

@@ -19,8 +19,13 @@ impl Extent {
 
     fn add(&mut self, value: f64, scale: Scale) {
         if value.is_finite() && (scale == Scale::Linear || value > 0.0) {
-            self.0 = self.0.min(value.clamp(-HUGE, HUGE));
-            self.1 = self.1.max(value.clamp(-HUGE, HUGE));
+            let least = if scale == Scale::Log {
+                1.0 / HUGE
+            } else {
+                -HUGE
+            };
+            self.0 = self.0.min(value.clamp(least, HUGE));
+            self.1 = self.1.max(value.clamp(least, HUGE));
         }
     }
 
@@ -87,7 +92,7 @@ impl Extent {
         let log = axis.scale == Scale::Log;
         if let Some((lower, upper)) = axis.range {
             let sound = lower.is_finite() && upper.is_finite() && upper - lower > 0.0;
-            if !sound || (upper - lower).is_infinite() || (log && !(lower > 0.0)) {
+            if !sound || (upper - lower).is_infinite() || (log && lower <= 0.0) {
                 return Err(Error::Range {
                     axis: axis.label.clone(),
                     lower,
@@ -184,7 +189,13 @@ impl Ranged for AxisMap {
 
     fn key_points<Hint: KeyPointHint>(&self, hint: Hint) -> Vec<f64> {
         if hint.weight().allow_light_points() {
-            self.division.minor.clone()
+            // Between evenly spread numbers the ticks are enough.
+            let fine = if self.scale == Scale::Log {
+                &self.division.minor[..]
+            } else {
+                &[]
+            };
+            fine.to_vec()
         } else {
             self.division.major.iter().map(|t| t.value).collect()
         }
@@ -200,10 +211,10 @@ mod tests {
     #![allow(clippy::unwrap_used)]
     use super::*;
 
-    fn seen(values: &[f64]) -> Extent {
+    fn seen(values: &[f64], scale: Scale) -> Extent {
         let mut extent = Extent::NONE;
         for &v in values {
-            extent.add(v, Scale::Linear);
+            extent.add(v, scale);
         }
         extent
     }
@@ -221,7 +232,7 @@ mod tests {
             &[1e-320],
         ] {
             for axis in [axis.clone(), axis.clone().from_zero(), Axis::log("x")] {
-                let (lower, upper) = seen(values).range(&axis, (0.05, 0.05)).unwrap();
+                let (lower, upper) = seen(values, axis.scale).range(&axis, (0.05, 0.05)).unwrap();
                 assert!(
                     upper > lower && (upper - lower).is_finite(),
                     "{values:?} {lower} {upper}"
@@ -253,7 +264,7 @@ mod tests {
 
     #[test]
     fn zero_stays_at_the_foot_and_padding_is_a_share_of_the_axis() {
-        let range = seen(&[2.0, 8.0])
+        let range = seen(&[2.0, 8.0], Scale::Linear)
             .range(&Axis::linear("x").from_zero(), (0.1, 0.2))
             .unwrap();
         assert_eq!(range, (0.0, 10.0));

@@ -106,7 +106,7 @@ fn indices(lower: f64, upper: f64, step: f64) -> impl Iterator<Item = f64> {
 fn multiples(lower: f64, upper: f64, step: f64) -> Vec<Tick> {
     let largest = lower.abs().max(upper.abs());
     // Powers of ten only where plain digits would be a row of noughts.
-    let power = if largest >= 1e7 || largest < 1e-3 {
+    let power = if !(1e-3..1e7).contains(&largest) {
         largest.log10().floor() as i32
     } else {
         0
