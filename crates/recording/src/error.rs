@@ -132,12 +132,13 @@ pub enum Error {
 
     /// A time column whose steps are not even.
     #[error(
-        "the time column is not even: line {line} is off by {off_steps:.3} steps (step {step_s:e} s, expected within {allowed_steps:.3} steps)"
+        "the time column is not even: row {row} lies {off_steps:.3} steps off (median step {step_s:.4e} s, expected within {allowed_steps:.3} steps)"
     )]
     UnevenTime {
-        /// Line of the worst row, from 1.
-        line: u64,
-        /// How far it lies from even spacing, in steps.
+        /// The worst row of numbers, from 1.
+        row: u64,
+        /// How far it lies from even spacing between the first and the last
+        /// row, in steps.
         off_steps: f64,
         /// The median step in seconds.
         step_s: f64,

@@ -56,7 +56,7 @@ pub(crate) struct Parsed {
 }
 
 /// Enough for any header row and a few rows of numbers.
-const HEAD_BYTES: u64 = 256 * 1024;
+pub(crate) const HEAD_BYTES: u64 = 256 * 1024;
 
 /// Frames decoded per column in one go: with a few channels they stay in the
 /// first-level cache while one column after the other is picked from them.
