@@ -14,8 +14,9 @@ use crate::polyline::{Box2, Point};
 /// Virtual units per logical pixel, so that plotters' whole numbers do not show.
 pub(crate) const FINE: f64 = 8.0;
 
-/// Drawing in design pixels: those of a page 800 high or 1200 wide, of which
-/// `unit` logical pixels make one on a larger layout.
+/// Drawing in design pixels, through plotters. A design pixel is a logical
+/// pixel on a page of 1200 × 800 and grows with the layout. Plotters' own font
+/// table is never asked: text is measured by the font that draws it.
 pub(crate) struct Canvas<'a, DB: DrawingBackend> {
     pub(crate) area: DrawingArea<DB, Shift>,
     pub(crate) fonts: &'a Fonts,

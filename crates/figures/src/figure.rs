@@ -131,7 +131,8 @@ pub enum Role {
 /// How the points of a [`Series`] are joined.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub enum SeriesStyle {
-    /// A line through the points, with the role's dash.
+    /// A line through the points, with the role's dash (solid where it turns
+    /// too densely for dashes to show).
     #[default]
     Line,
     /// A line through the points, always solid, over a light area down to the

@@ -27,6 +27,8 @@ pub(crate) const LEGEND_PITCH: f64 = 23.0;
 /// From an axis to its numbers: the tick and some air.
 pub(crate) const NUMBER_GAP: f64 = 10.0;
 pub(crate) const LANE: f64 = 17.0;
+/// Between two panels.
+const BETWEEN: f64 = 14.0;
 const LEAST_PLOT: f64 = 40.0;
 
 /// A figure with everything put in its place, in design pixels.
@@ -44,10 +46,13 @@ pub(crate) struct Sheet<'f> {
 /// Legend entries by rows, each with its left end.
 pub(crate) type LegendRows<'f> = Vec<Vec<(f64, Key<'f>)>>;
 
+/// A panel with its height and all that decides it; the width comes later,
+/// when the numbers of every y axis are known.
 struct Draft<'f> {
     panel: &'f Panel,
     x_range: (f64, f64),
-    y_axis: Axis,
+    /// Whether the x axis carries numbers and its label.
+    numbered: bool,
     y_label: Vec<String>,
     x_label: Vec<String>,
     legend: Vec<Vec<Key<'f>>>,
@@ -86,58 +91,8 @@ pub(crate) fn lay_out<'f>(
     };
     let bottom = height - 0.6 * EDGE - foot_height;
 
-    let x_ranges = x_ranges(figure)?;
-    let last = figure.panels.len() - 1;
-    let mut drafts: Vec<Draft<'f>> = Vec::new();
-    let mut fixed = 0.0;
-    for (i, panel) in figure.panels.iter().enumerate() {
-        let numbered = !figure.shared_x || i == last;
-        let x_label = if numbered {
-            fonts.wrap(&panel.x.label, AXIS_LABEL, false, text_width - 110.0, 2)
-        } else {
-            Vec::new()
-        };
-        // The width is not known yet; text is flowed into a little less.
-        let (legend, rows) = flow_legend(panel, fonts, text_width - 120.0);
-        fixed += head_height(rows)
-            + foot_height_of(numbered, x_label.len())
-            + if i == last { 0.0 } else { 14.0 };
-        drafts.push(Draft {
-            panel,
-            x_range: x_ranges[i],
-            y_axis: panel.y.clone(),
-            y_label: Vec::new(),
-            x_label,
-            legend,
-            rows,
-            top: 0.0,
-            height: 0.0,
-        });
-    }
-    let shares: f64 = figure.panels.iter().map(|p| p.height_share).sum();
-    let mut at = top;
-    for (i, draft) in drafts.iter_mut().enumerate() {
-        let numbered = !figure.shared_x || i == last;
-        draft.height = (bottom - top - fixed) * draft.panel.height_share / shares;
-        draft.top = at + head_height(draft.rows);
-        at = draft.top + draft.height + foot_height_of(numbered, draft.x_label.len()) + 14.0;
-        if draft.height < LEAST_PLOT {
-            return Err(Error::Room {
-                panel: i + 1,
-                width: text_width,
-                height: draft.height,
-            });
-        }
-        draft.y_label = fonts.wrap(
-            &draft.panel.y.label,
-            AXIS_LABEL,
-            false,
-            draft.height + 20.0,
-            2,
-        );
-    }
-
-    let y_ranges = y_ranges(figure, &mut drafts)?;
+    let drafts = draft(figure, fonts, text_width, top, bottom)?;
+    let y_ranges = y_ranges(figure, &drafts)?;
     let y_maps: Vec<AxisMap> = drafts
         .iter()
         .zip(&y_ranges)
@@ -167,9 +122,8 @@ pub(crate) fn lay_out<'f>(
         });
     }
 
-    let inset_ranges = inset_ranges(figure)?;
     let mut plots = Vec::new();
-    for (i, (draft, y)) in drafts.into_iter().zip(y_maps).enumerate() {
+    for ((draft, y), inset_y) in drafts.into_iter().zip(y_maps).zip(inset_ranges(figure)?) {
         let frame = Box2::new(left, draft.top, right, draft.top + draft.height);
         let x = x_map(&draft.panel.x, draft.x_range, left, right, NUMBER, &x_fonts);
         plots.push(Plot {
@@ -177,13 +131,13 @@ pub(crate) fn lay_out<'f>(
             frame,
             x,
             y,
-            numbered: !figure.shared_x || i == last,
+            numbered: draft.numbered,
             number_size: NUMBER,
             x_label: draft.x_label,
             y_label: draft.y_label,
             legend: place_legend(draft.legend, fonts, right),
             head_rows: draft.rows,
-            inset_y: inset_ranges[i],
+            inset_y,
         });
     }
     Ok(Sheet {
@@ -195,6 +149,61 @@ pub(crate) fn lay_out<'f>(
         plots,
         label_x: EDGE + 0.5 * label_width - 4.0,
     })
+}
+
+/// Shares the height between `top` and `bottom` out among the panels.
+fn draft<'f>(
+    figure: &'f Figure,
+    fonts: &Fonts,
+    text_width: f64,
+    top: f64,
+    bottom: f64,
+) -> Result<Vec<Draft<'f>>, Error> {
+    let last = figure.panels.len() - 1;
+    let mut drafts = Vec::new();
+    let mut fixed = BETWEEN * last as f64;
+    for (i, (panel, x_range)) in figure.panels.iter().zip(x_ranges(figure)?).enumerate() {
+        let numbered = !figure.shared_x || i == last;
+        let x_label = if numbered {
+            fonts.wrap(&panel.x.label, AXIS_LABEL, false, text_width - 110.0, 2)
+        } else {
+            Vec::new()
+        };
+        // The width is not known yet; text is flowed into a little less.
+        let (legend, rows) = flow_legend(panel, fonts, text_width - 120.0);
+        fixed += head_height(rows) + foot_height_of(numbered, x_label.len());
+        drafts.push(Draft {
+            panel,
+            x_range,
+            numbered,
+            y_label: Vec::new(),
+            x_label,
+            legend,
+            rows,
+            top: 0.0,
+            height: 0.0,
+        });
+    }
+    let shares: f64 = figure.panels.iter().map(|p| p.height_share).sum();
+    let mut at = top;
+    for (i, draft) in drafts.iter_mut().enumerate() {
+        draft.height = (bottom - top - fixed) * draft.panel.height_share / shares;
+        draft.top = at + head_height(draft.rows);
+        at = draft.top
+            + draft.height
+            + foot_height_of(draft.numbered, draft.x_label.len())
+            + BETWEEN;
+        if draft.height < LEAST_PLOT {
+            return Err(Error::Room {
+                panel: i + 1,
+                width: text_width,
+                height: draft.height,
+            });
+        }
+        let room = draft.height + 20.0;
+        draft.y_label = fonts.wrap(&draft.panel.y.label, AXIS_LABEL, false, room, 2);
+    }
+    Ok(drafts)
 }
 
 /// The panel's axes for a magnified detail, if its place has room for them.
@@ -219,7 +228,7 @@ pub(crate) fn detail<'f>(
         .map(|t| extent(&t.label))
         .fold(0.0, f64::max);
     let left = place.left + 8.0 + number_width + 8.0;
-    let right = place.right - 16.0;
+    let right = place.right - 22.0;
     (right - left >= LEAST_PLOT).then(|| Plot {
         panel,
         frame: Box2::new(left, top, right, bottom),
@@ -236,14 +245,11 @@ pub(crate) fn detail<'f>(
 }
 
 fn y_map(axis: &Axis, range: (f64, f64), top: f64, bottom: f64, size: f64) -> AxisMap {
-    let division = divide(
-        range,
-        axis.scale,
-        axis.ticks,
-        bottom - top,
-        2.2 * size,
-        &|_| cap_height(size),
-    );
+    // Decades cannot be halved, so they may stand closer.
+    let gap = if axis.scale == Scale::Log { 1.6 } else { 2.4 } * size;
+    let division = divide(range, axis.scale, axis.ticks, bottom - top, gap, &|_| {
+        cap_height(size)
+    });
     AxisMap {
         lower: range.0,
         upper: range.1,
@@ -376,7 +382,7 @@ fn x_ranges(figure: &Figure) -> Result<Vec<(f64, f64)>, Error> {
         .collect()
 }
 
-fn y_ranges(figure: &Figure, drafts: &mut [Draft<'_>]) -> Result<Vec<(f64, f64)>, Error> {
+fn y_ranges(figure: &Figure, drafts: &[Draft<'_>]) -> Result<Vec<(f64, f64)>, Error> {
     let extents: Vec<Extent> = drafts
         .iter()
         .map(|d| Extent::of_y(d.panel, d.x_range))
@@ -402,16 +408,16 @@ fn y_ranges(figure: &Figure, drafts: &mut [Draft<'_>]) -> Result<Vec<(f64, f64)>
             .fold((0.0_f64, 0.0_f64), |a, b| (a.0.max(b.0), a.1.max(b.1)));
         let given = drafts
             .iter()
-            .find(|d| d.y_axis.range.is_some())
+            .find(|d| d.panel.y.range.is_some())
             .unwrap_or(&drafts[0]);
-        let shared = all.range(&given.y_axis, pad)?;
+        let shared = all.range(&given.panel.y, pad)?;
         return Ok(vec![shared; drafts.len()]);
     }
     drafts
         .iter()
         .zip(extents)
         .zip(pads)
-        .map(|((d, e), pad)| e.range(&d.y_axis, pad))
+        .map(|((d, e), pad)| e.range(&d.panel.y, pad))
         .collect()
 }
 

@@ -4,8 +4,10 @@ use crate::polyline::{Box2, Point, clip_segment};
 const CELL: f64 = 4.0;
 /// Least distance between two pieces of text.
 const APART: f64 = 5.0;
-/// Share of a label's cells that may lie over data.
-const TOLERATED: f64 = 0.02;
+/// Share of a leader's cells that may lie over data.
+const CROSSED: f64 = 0.25;
+/// Farthest a label may stand to the side of its point.
+const REACH: f64 = 40.0;
 
 /// Finds free places for text inside a plot.
 pub(crate) struct Placer {
@@ -102,8 +104,8 @@ impl Placer {
 
     /// A place near a point for a label of the given size: straight above its
     /// crest (the point itself, or the tip of a band around it) if that is
-    /// free, else the cheapest in distance, in data covered by the label and
-    /// in data crossed by its leader.
+    /// free, else the cheapest in distance and in data crossed by its leader.
+    /// A label never covers data.
     pub(crate) fn label(
         &mut self,
         at: Point,
@@ -114,22 +116,20 @@ impl Placer {
         let mut best: Option<(f64, Placed)> = None;
         let mut weigh = |left: f64, bottom: f64| {
             let place = Box2::new(left, bottom - height, left + width, bottom);
-            let covered = self.covered(&place.grown(2.0));
-            if covered > TOLERATED || !self.free(&place) {
+            if self.covered(&place.grown(2.0)) > 0.0 || !self.free(&place) {
                 return;
             }
-            let end = (
-                at.0.clamp(place.left, place.right),
-                if place.top < crest {
-                    place.bottom + 3.0
-                } else {
-                    at.1.clamp(place.top, place.bottom)
-                },
-            );
+            let above = place.bottom <= crest;
+            let end_y = if above {
+                place.bottom + 3.0
+            } else {
+                at.1.clamp(place.top, place.bottom)
+            };
+            let end = (at.0.clamp(place.left, place.right), end_y);
             let whole = (end.0 - at.0).hypot(end.1 - at.1);
-            let distance = (end.0 - at.0).hypot(end.1 - at.1.min(end.1.max(crest)));
+            let distance = (end.0 - at.0).hypot(end.1 - if above { crest } else { at.1 });
             let leader = (distance > 9.0).then_some((at, end));
-            let mut cost = distance + 0.15 * (left + 0.5 * width - at.0).abs() + 400.0 * covered;
+            let mut cost = distance + 0.15 * (left + 0.5 * width - at.0).abs();
             if let Some((a, b)) = leader {
                 let near = (
                     a.0 + 6.0 * (b.0 - a.0) / whole,
@@ -143,7 +143,11 @@ impl Placer {
                 {
                     return;
                 }
-                cost += 25.0 + 150.0 * self.crossed(near, b);
+                let crossed = self.crossed(near, b);
+                if crossed > CROSSED || (b.0 - a.0).abs() > REACH {
+                    return;
+                }
+                cost += 25.0 + 150.0 * crossed;
             }
             if best.is_none_or(|(least, _)| cost < least) {
                 best = Some((cost, Placed { place, leader }));
@@ -158,7 +162,7 @@ impl Placer {
             }
         }
         for side in [8.0, -8.0 - width] {
-            for drop in [0.5, 1.2, 0.0] {
+            for drop in [0.5, 1.0, 0.0] {
                 weigh(at.0 + side, at.1 + drop * height);
             }
         }

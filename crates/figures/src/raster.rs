@@ -11,6 +11,9 @@ use tiny_skia::{
 
 use crate::font::{Fonts, Pen, cap_height};
 
+/// Most points of a path stroked at once.
+const PART: usize = 256;
+
 type Drawn = Result<(), DrawingErrorKind<Infallible>>;
 
 /// A plotters backend on an anti-aliasing rasteriser.
@@ -214,11 +217,19 @@ impl DrawingBackend for Bitmap<'_> {
         path: I,
         style: &S,
     ) -> Drawn {
-        self.stroke(
-            Self::polyline(path, false),
-            style.color(),
-            style.stroke_width(),
-        );
+        let points: Vec<_> = path.into_iter().collect();
+        // The rasteriser's work grows faster than a path's length. Parts share
+        // a segment, so that the joint at either end of it is round.
+        let mut start = 0;
+        while start + 1 < points.len() {
+            let end = (start + PART).min(points.len());
+            let part = Self::polyline(points[start..end].iter().copied(), false);
+            self.stroke(part, style.color(), style.stroke_width());
+            if end == points.len() {
+                break;
+            }
+            start = end - 2;
+        }
         Ok(())
     }
 
