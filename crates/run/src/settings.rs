@@ -6,14 +6,23 @@
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
+/// How a ratio of shafts is written: two whole numbers above 0, or one.
+pub(crate) const RATIO_PATTERN: &str = r"^ *[0-9]*[1-9][0-9]* *(/ *[0-9]*[1-9][0-9]* *)?$";
+
+/// What a channel may measure; `null` as when left out.
+fn quantity_names() -> Vec<Option<&'static str>> {
+    let names = shaftwise_recording::Quantity::ALL.map(|quantity| Some(quantity.name()));
+    names.into_iter().chain([None]).collect()
+}
+
 /// A channel, by number from 1 in file order or by name.
 #[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(untagged)]
 pub enum ChannelPick {
     /// Number from 1, in file order.
-    Number(u32),
+    Number(#[schemars(range(min = 1))] u32),
     /// Name as in the run file or the recording's header.
-    Name(String),
+    Name(#[schemars(length(min = 1))] String),
 }
 
 impl std::fmt::Display for ChannelPick {
@@ -43,8 +52,10 @@ pub struct TachSettings {
     /// The tach's channel.
     pub channel: Option<ChannelPick>,
     /// File of pulse times: seconds from the first sample, one a line. Relative to the run file.
+    #[schemars(length(min = 1))]
     pub times: Option<String>,
     /// Pulses per revolution. Range: 1 to 4096. Default: 1.
+    #[schemars(range(min = 1, max = 4096))]
     pub pulses_per_rev: u32,
     /// Edge timed. Default: rising.
     pub edge: EdgeChoice,
@@ -71,9 +82,11 @@ impl Default for TachSettings {
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Exclusion {
-    /// Start in seconds from the first sample.
+    /// Start in seconds from the first sample. Range: 0 and more, below to_s.
+    #[schemars(range(min = 0))]
     pub from_s: f64,
-    /// End in seconds from the first sample.
+    /// End in seconds from the first sample. Range: 0 and more.
+    #[schemars(range(min = 0))]
     pub to_s: f64,
     /// Why it is left out, for the report.
     #[serde(default)]
@@ -84,9 +97,11 @@ pub struct Exclusion {
 #[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize, JsonSchema)]
 #[serde(default, deny_unknown_fields)]
 pub struct Selection {
-    /// Start in seconds from the first sample. Default: the first pulse.
+    /// Start in seconds from the first sample. Range: 0 and more, below to_s. Default: the first pulse.
+    #[schemars(range(min = 0))]
     pub from_s: Option<f64>,
-    /// End in seconds from the first sample. Default: the last pulse.
+    /// End in seconds from the first sample. Range: 0 and more. Default: the last pulse.
+    #[schemars(range(min = 0))]
     pub to_s: Option<f64>,
     /// Stretches left out.
     pub exclude: Vec<Exclusion>,
@@ -166,6 +181,7 @@ pub enum ShownAs {
 #[serde(default, deny_unknown_fields)]
 pub struct SpeedSettings {
     /// Step of the curve in seconds. Range: above 0. Default: 0.02.
+    #[schemars(extend("exclusiveMinimum" = 0))]
     pub step: f64,
 }
 
@@ -180,16 +196,21 @@ impl Default for SpeedSettings {
 #[serde(default, deny_unknown_fields)]
 pub struct SpectrumSettings {
     /// Channels analysed. Default: all but the tach and the time.
+    #[schemars(length(min = 1))]
     pub channel: Option<Vec<ChannelPick>>,
     /// Highest order. Range: above 0 to 100 000. Default: 50, less where the sample rate forbids.
+    #[schemars(range(max = 100_000), extend("exclusiveMinimum" = 0))]
     pub max_order: Option<f64>,
     /// Spacing of the lines in orders; a block is 1/order_step revolutions. Range: 1/65536 to 1. Default: 1/16.
+    #[schemars(range(min = 1.0 / 65536.0, max = 1))]
     pub order_step: f64,
     /// Weighting of each block. Default: hann.
     pub window: WindowChoice,
     /// Overlap of the blocks in per cent. Range: 0 to 95. Default: 50.
+    #[schemars(range(min = 0, max = 95))]
     pub overlap: f64,
     /// Blocks averaged. Range: 1 and more. Default: all.
+    #[schemars(range(min = 1))]
     pub averages: Option<u64>,
     /// How blocks become one curve. Default: power.
     pub averaging: Averaging,
@@ -203,8 +224,10 @@ pub struct SpectrumSettings {
     #[serde(rename = "as")]
     pub shown_as: Option<ShownAs>,
     /// Repeatability wished, ± dB at 90 %. Range: above 0. Default: 1.
+    #[schemars(extend("exclusiveMinimum" = 0))]
     pub repeatability: f64,
     /// The shaft analysed turns A per B revolutions of the tach's shaft, written "A/B". Default: the tach's shaft.
+    #[schemars(extend("pattern" = RATIO_PATTERN))]
     pub ratio: Option<String>,
 }
 
@@ -233,15 +256,19 @@ impl Default for SpectrumSettings {
 #[serde(default, deny_unknown_fields)]
 pub struct SynchronousSettings {
     /// Channels analysed. Default: all but the tach and the time.
+    #[schemars(length(min = 1))]
     pub channel: Option<Vec<ChannelPick>>,
     /// Highest order kept. Range: above 0 to 100 000. Default: 50, less where the sample rate forbids.
+    #[schemars(range(max = 100_000), extend("exclusiveMinimum" = 0))]
     pub max_order: Option<f64>,
     /// Revolutions averaged. Range: 2 and more. Default: all.
+    #[schemars(range(min = 2))]
     pub averages: Option<u64>,
     /// Show another quantity. Default: as recorded.
     #[serde(rename = "as")]
     pub shown_as: Option<ShownAs>,
     /// The shaft analysed turns A per B revolutions of the tach's shaft, written "A/B". Default: the tach's shaft.
+    #[schemars(extend("pattern" = RATIO_PATTERN))]
     pub ratio: Option<String>,
     /// Write the residual, resampled to the mean speed, as a WAV. Default: no.
     pub write_wav: bool,
@@ -252,16 +279,21 @@ pub struct SynchronousSettings {
 #[serde(default, deny_unknown_fields)]
 pub struct CompareSettings {
     /// Channels analysed. Default: all but the tach and the time.
+    #[schemars(length(min = 1))]
     pub channel: Option<Vec<ChannelPick>>,
     /// Highest order. Range: above 0 to 100 000. Default: 50, less where the sample rate forbids.
+    #[schemars(range(max = 100_000), extend("exclusiveMinimum" = 0))]
     pub max_order: Option<f64>,
     /// Spacing of the lines in orders, in both spectra. Range: 1/65536 to 1. Default: 1/16.
+    #[schemars(range(min = 1.0 / 65536.0, max = 1))]
     pub order_step: f64,
     /// Weighting of each block. Default: hann.
     pub window: WindowChoice,
     /// Overlap of the blocks in per cent. Range: 0 to 95. Default: 50.
+    #[schemars(range(min = 0, max = 95))]
     pub overlap: f64,
     /// Blocks averaged. Range: 1 and more. Default: all.
+    #[schemars(range(min = 1))]
     pub averages: Option<u64>,
     /// How levels are shown. Default: rms for acceleration and velocity, peak-to-peak for displacement.
     pub detector: Option<Detector>,
@@ -269,6 +301,7 @@ pub struct CompareSettings {
     #[serde(rename = "as")]
     pub shown_as: Option<ShownAs>,
     /// The shaft analysed turns A per B revolutions of the tach's shaft, written "A/B". Default: the tach's shaft.
+    #[schemars(extend("pattern" = RATIO_PATTERN))]
     pub ratio: Option<String>,
 }
 
@@ -321,28 +354,38 @@ impl Analysis {
 #[serde(default, deny_unknown_fields)]
 pub struct ChannelSettings {
     /// Number from 1, in file order. Default: the place in the list.
+    #[schemars(range(min = 1))]
     pub number: Option<u32>,
     /// Name for tables and figures.
+    #[schemars(length(min = 1))]
     pub name: Option<String>,
-    /// acceleration, velocity, displacement, pressure, force, voltage, speed or other.
+    /// What it measures. Default: what the unit measures.
+    #[schemars(extend("enum" = quantity_names()))]
     pub quantity: Option<String>,
     /// Unit of the calibrated values, such as m/s2, g, mm/s, um, Pa, V.
+    #[schemars(length(min = 1))]
     pub unit: Option<String>,
     /// Units per sample value (integer samples count as −1…1 of full scale). Negative turns the sign.
+    #[schemars(extend("not" = {"const": 0}))]
     pub factor: Option<f64>,
     /// Sensitivity in mV per unit; needs range_v for integer samples.
+    #[schemars(extend("not" = {"const": 0}))]
     pub mv_per_unit: Option<f64>,
     /// Input range: volts at full scale.
+    #[schemars(extend("exclusiveMinimum" = 0))]
     pub range_v: Option<f64>,
 }
 
 /// One recording and its channels.
 #[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize, JsonSchema)]
 #[serde(default, deny_unknown_fields)]
+#[schemars(extend("required" = ["file"]))]
 pub struct RecordingSettings {
     /// The file, relative to the run file; "-" for standard input.
+    #[schemars(length(min = 1))]
     pub file: String,
     /// Sample rate for text without a time column, in Hz.
+    #[schemars(extend("exclusiveMinimum" = 0))]
     pub sample_rate_hz: Option<f64>,
     /// Channels; those left out keep what the file says.
     pub channels: Vec<ChannelSettings>,
@@ -351,8 +394,10 @@ pub struct RecordingSettings {
 /// A whole run file.
 #[derive(Debug, Clone, PartialEq, Default, Serialize, Deserialize, JsonSchema)]
 #[serde(default, deny_unknown_fields)]
+#[schemars(title = "Shaftwise run file", extend("required" = ["recordings"]))]
 pub struct RunFile {
     /// Recordings; the first one is analysed by `report`.
+    #[schemars(length(min = 1))]
     pub recordings: Vec<RecordingSettings>,
     /// The tach.
     pub tach: TachSettings,
