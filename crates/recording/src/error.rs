@@ -208,7 +208,7 @@ impl Error {
             Self::TextNamedWav { .. } => Some(
                 "look at the file with a text viewer; a download may have saved a message in its place",
             ),
-            Self::Empty | Self::NoSamples { .. } => {
+            Self::Empty | Self::CutHeader { .. } | Self::NoSamples { .. } => {
                 Some("copy the recording from the recorder again")
             }
             Self::UnknownFormat { .. } => Some("export the recording as WAV or as delimited text"),

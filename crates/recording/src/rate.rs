@@ -98,7 +98,8 @@ fn ratio(ratio: f64, len: usize) -> Option<(u64, u64)> {
     let mut rest = ratio;
     loop {
         let whole = rest.floor();
-        if !(whole <= MAX_TERM as f64) {
+        // an exact fraction leaves a rest of 0 and comes here as infinity
+        if whole > MAX_TERM as f64 {
             return None;
         }
         let next = |(last, before): (u64, u64)| (whole as u64 * last + before, last);

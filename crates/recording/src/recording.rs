@@ -58,8 +58,8 @@ pub(crate) struct Parsed {
 /// Enough for any header row and a few rows of numbers.
 pub(crate) const HEAD_BYTES: u64 = 256 * 1024;
 
-/// Frames decoded per column in one go: with a few channels they stay in the
-/// first-level cache while one column after the other is picked from them.
+/// Raw frames that one column after the other is picked from: few enough to stay
+/// in the first-level cache meanwhile.
 const TILE_BYTES: usize = 16 * 1024;
 
 impl Recording {

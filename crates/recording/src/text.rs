@@ -13,7 +13,7 @@ use crate::channel::Origin;
 use crate::error::printable;
 use crate::recording::{HEAD_BYTES, Layout, Parsed};
 use crate::sample::{Encoding, SampleFormat};
-use crate::time_column::TimeColumn;
+use crate::time_column::{MeasuredRate, TimeColumn};
 use crate::unit::Unit;
 
 /// Longest line accepted; a thousand columns take some 25 kB.
@@ -341,6 +341,71 @@ fn role(name: &str, unit: Option<&str>) -> Role {
     })
 }
 
+/// What each column is for, and where it goes in the spool: time first, then
+/// the channels in file order.
+struct Columns {
+    roles: Vec<Role>,
+    /// The time column, or the column that may turn out to be one.
+    time_at: Option<usize>,
+    time_is_named: bool,
+    seconds_per_unit: f64,
+    slot: Vec<Option<usize>>,
+    slots: usize,
+}
+
+impl Columns {
+    fn plan(columns: usize, names: &[String], units: &[String]) -> Result<Self, Error> {
+        let mut roles = Vec::with_capacity(columns);
+        let mut time = None;
+        for i in 0..columns {
+            let name = names.get(i).map_or("", String::as_str);
+            let role = match role(name, units.get(i).map(String::as_str)) {
+                // A second time is a channel like any other.
+                Role::Time(_) if time.is_some() => Role::Channel(Origin {
+                    name: Some(name.to_owned()),
+                    unit: None,
+                    text: true,
+                }),
+                role => role,
+            };
+            if let Role::Time(seconds_per_unit) = role {
+                time = Some((i, seconds_per_unit));
+            }
+            roles.push(role);
+        }
+        let time_is_named = time.is_some();
+        if let (None, true, Role::Channel(origin)) = (time, columns > 1, &roles[0]) {
+            let unit = origin.unit.as_deref().and_then(seconds_per);
+            time = Some((0, unit.unwrap_or(1.0)));
+        }
+        let time_at = time.map(|(at, _)| at);
+
+        let mut slots = 0;
+        let mut slot = vec![None; columns];
+        let channels =
+            (0..columns).filter(|&i| Some(i) != time_at && !matches!(roles[i], Role::Counter));
+        for i in time_at.into_iter().chain(channels) {
+            slot[i] = Some(slots);
+            slots += 1;
+        }
+        if slots == usize::from(time_at.is_some()) {
+            return Err(Error::Setting {
+                what: "number of channels".into(),
+                found: "none beside the time column".into(),
+                expected: "at least one column of samples".into(),
+            });
+        }
+        Ok(Self {
+            roles,
+            time_at,
+            time_is_named,
+            seconds_per_unit: time.map_or(1.0, |(_, seconds)| seconds),
+            slot,
+            slots,
+        })
+    }
+}
+
 /// Decodes `head` and `rest` into `spool`. A given rate stands in place of the
 /// time column's.
 pub(crate) fn parse(
@@ -369,59 +434,16 @@ pub(crate) fn parse(
         mut warnings,
     } = shape(whole_lines)?;
 
-    let mut roles: Vec<Role> = (0..columns)
-        .map(|i| {
-            let name = names.get(i).map_or("", String::as_str);
-            role(name, units.get(i).map(String::as_str))
-        })
-        .collect();
-    let time_at = roles.iter().position(|role| matches!(role, Role::Time(_)));
-    let mut seconds_per_unit = 1.0;
-    for (i, role) in roles.iter_mut().enumerate() {
-        if let Role::Time(seconds) = *role {
-            if Some(i) == time_at {
-                seconds_per_unit = seconds;
-            } else {
-                // A second one is a channel like any other.
-                *role = Role::Channel(Origin {
-                    name: names.get(i).cloned(),
-                    unit: None,
-                    text: true,
-                });
-            }
-        }
-    }
-    // Else the first column may turn out to be the time.
-    let maybe_time = time_at.is_none() && columns > 1;
-    if let (true, Role::Channel(origin)) = (maybe_time, &roles[0]) {
-        seconds_per_unit = origin.unit.as_deref().and_then(seconds_per).unwrap_or(1.0);
-    }
-    let time_at = time_at.or(maybe_time.then_some(0));
-
-    // Where each column goes in the spool: time first, then the channels.
-    let mut slots = 0;
-    let mut slot = vec![None; columns];
-    let channels =
-        (0..columns).filter(|&i| Some(i) != time_at && !matches!(roles[i], Role::Counter));
-    for i in time_at.into_iter().chain(channels) {
-        slot[i] = Some(slots);
-        slots += 1;
-    }
-    if slots == usize::from(time_at.is_some()) {
-        return Err(Error::Setting {
-            what: "number of channels".into(),
-            found: "none beside the time column".into(),
-            expected: "at least one column of samples".into(),
-        });
-    }
+    let plan = Columns::plan(columns, &names, &units)?;
+    let (time_at, slots) = (plan.time_at, plan.slots);
 
     let reader = BufReader::with_capacity(1 << 18, Cursor::new(head).chain(rest));
-    let mut time = TimeColumn::new(seconds_per_unit);
+    let mut time = TimeColumn::new(plan.seconds_per_unit);
     let rows = Rows {
         separator,
         columns,
         first_line: first_row as u64 + 1,
-        slot: &slot,
+        slot: &plan.slot,
         slots,
         time_at,
     };
@@ -440,27 +462,16 @@ pub(crate) fn parse(
         });
     }
     let measured = match time_at {
-        Some(_) if maybe_time => time.rate(spool, frame_bytes).ok().filter(|rate| {
-            // a column that counts rows fits as well, and is no time either
-            sample_rate_hz.is_some() || rate.rate_hz != 1.0
-        }),
-        Some(_) => match (time.rate(spool, frame_bytes), sample_rate_hz) {
-            (Ok(rate), _) => Some(rate),
-            (Err(error), None) => return Err(error),
-            (Err(error), Some(_)) => {
-                warnings.push(format!("{error}; the given sample rate was taken"));
-                None
-            }
-        },
-        None => None,
+        Some(_) => time.rate(spool, frame_bytes),
+        None => Err(Error::NoSampleRate),
     };
-    let is_time = time_at.is_some() && (measured.is_some() || !maybe_time);
+    // Counting rows by one is even, too; nothing measured here runs at 1 Hz.
+    let counts_rows = |rate: &MeasuredRate| !plan.time_is_named && rate.rate_hz == 1.0;
+    let is_time = time_at.is_some() && (plan.time_is_named || measured.is_ok());
     let rate = match (sample_rate_hz, measured) {
-        (Some(given), measured) => {
-            if let Some(measured) = measured
-                && measured.rate_hz != 1.0
-                && !((measured.rate_hz / given - 1.0).abs() <= measured.uncertainty + 1e-4)
-            {
+        (Some(given), Ok(measured)) => {
+            let apart = (measured.rate_hz / given - 1.0).abs();
+            if apart > measured.uncertainty + 1e-4 && !counts_rows(&measured) {
                 warnings.push(format!(
                     "sample rate {given} Hz taken as given; the time column says {} Hz",
                     measured.rate_hz
@@ -468,14 +479,22 @@ pub(crate) fn parse(
             }
             given
         }
-        (None, Some(measured)) => {
+        (Some(given), Err(error)) => {
+            if plan.time_is_named {
+                warnings.push(format!("{error}; the given sample rate was taken"));
+            }
+            given
+        }
+        (None, Ok(measured)) if !counts_rows(&measured) => {
             warnings.extend(measured.warning());
             measured.rate_hz
         }
-        (None, None) => return Err(Error::NoSampleRate),
+        (None, Err(error)) if plan.time_is_named => return Err(error),
+        (None, _) => return Err(Error::NoSampleRate),
     };
 
-    let origins = roles
+    let origins = plan
+        .roles
         .into_iter()
         .enumerate()
         .filter(|&(i, _)| !(is_time && Some(i) == time_at))

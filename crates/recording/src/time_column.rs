@@ -204,7 +204,7 @@ mod tests {
         assert_eq!(snap(51_199.9, 1e-5), 51_200.0);
         assert_eq!(snap(51_199.9, 1e-7), 51_199.9);
         assert_eq!(snap(44_099.99, 1e-6), 44_100.0);
-        assert_eq!(snap(1234.000_1, 1e-6), 1234.0);
+        assert_eq!(snap(1_234.000_1, 1e-6), 1234.0);
         assert_eq!(snap(0.1 + 1e-12, 1e-10), 0.1);
     }
 }

@@ -211,14 +211,18 @@ fn chunk(header: &Header<'_>, family: Family, at: u64, sizes64: &Sizes64) -> Res
 }
 
 fn next_chunk(family: Family, chunk: &Chunk, at: u64) -> Result<u64, Error> {
-    let alignment = if family == Family::W64 { 8 } else { 2 };
+    let (alignment, size_at) = if family == Family::W64 {
+        (8, 16)
+    } else {
+        (2, 4)
+    };
     chunk
         .stated
         .and_then(|stated| chunk.body.checked_add(stated))
         .and_then(|end| end.checked_next_multiple_of(alignment))
         .ok_or_else(|| Error::Header {
             field: "chunk size",
-            offset: at + 4,
+            offset: at + size_at,
             found: chunk
                 .stated
                 .map_or("open".into(), |stated| stated.to_string()),
@@ -321,7 +325,7 @@ fn read_format(header: &Header<'_>, chunk: &Chunk) -> Result<Format, Error> {
         }
     };
     let bytes = bits.div_ceil(8);
-    if !allowed.contains(&bytes) || (encoding == Encoding::Float && bits % 8 != 0) {
+    if !allowed.contains(&bytes) || (encoding == Encoding::Float && !bits.is_multiple_of(8)) {
         let expected = match encoding {
             Encoding::Float => "32 or 64 for floats",
             _ => "1 to 32 for integers",
