@@ -1,1 +1,9 @@
-//! Peaks, verdicts and comparisons drawn from averages.
+//! Peaks, bounds, verdicts and comparisons drawn from averages.
+
+mod compare;
+mod lobe;
+mod spectrum;
+
+pub use compare::{ComparedPeak, SmearModel, compare_peak};
+pub use lobe::WindowLobe;
+pub use spectrum::{Peak, SpectrumFindings, SpectrumReading, Verdict, read_spectrum};

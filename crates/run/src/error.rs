@@ -5,8 +5,13 @@
 #[non_exhaustive]
 pub enum Error {
     /// The recording could not be read.
-    #[error("{0}")]
-    Recording(#[from] shaftwise_recording::Error),
+    #[error("{file}: {source}")]
+    Recording {
+        /// Its name.
+        file: String,
+        /// Why.
+        source: shaftwise_recording::Error,
+    },
     /// The pulses give no rotation.
     #[error("{0}")]
     Rotation(#[from] shaftwise_rotation::Error),
@@ -46,6 +51,11 @@ pub enum Error {
 }
 
 impl Error {
+    /// Puts the recording's name to what its reader says.
+    pub(crate) fn in_recording(file: &str) -> impl Fn(shaftwise_recording::Error) -> Self {
+        move |source| Self::Recording { file: file.to_owned(), source }
+    }
+
     /// What the user can do about it.
     #[must_use]
     pub fn hint(&self) -> Option<String> {

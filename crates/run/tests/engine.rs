@@ -1,0 +1,230 @@
+//! The engine against recordings with planted content.
+#![allow(clippy::unwrap_used, missing_docs)]
+
+use shaftwise_recording::{FloatWidth, WavConfig, WavWriter};
+use shaftwise_run::{
+    Analysis, AnalysisResult, AxisChoice, CompareResult, CompareSettings, Control, Job, RecordingSettings, RunResult,
+    Selection, ShownAs, SpectrumResult, SpectrumSettings, SpeedSettings, SynchronousResult, SynchronousSettings,
+    TachSettings, WindowChoice, execute,
+};
+use shaftwise_synth::{Channel, Noise, Order, PulseTrain, Recipe, Speed, Synth, Tone};
+use std::path::Path;
+use std::sync::atomic::AtomicBool;
+
+/// Writes the recipe's channels as a 64-bit float WAV and its true pulse times beside it.
+fn write(dir: &Path, recipe: &Recipe) {
+    let rendered = Synth::render(recipe).unwrap();
+    let file = std::fs::File::create(dir.join("r.wav")).unwrap();
+    let config = WavConfig {
+        channels: rendered.channels.len(),
+        sample_rate_hz: recipe.sample_rate_hz,
+        frames: rendered.channels[0].len() as u64,
+        width: FloatWidth::F64,
+    };
+    let mut writer = WavWriter::new(std::io::BufWriter::new(file), &config).unwrap();
+    writer.write_planar(&rendered.channels).unwrap();
+    writer.finish().unwrap();
+    let mut times = String::new();
+    for time in rendered.truth.tachs.first().map(|t| t.times_s()).unwrap_or_default() {
+        times.push_str(&format!("{time:.17}\n"));
+    }
+    std::fs::write(dir.join("times.txt"), times).unwrap();
+}
+
+fn job(dir: &Path, analyses: Vec<Analysis>) -> Job {
+    Job {
+        recording: RecordingSettings { file: "r.wav".to_owned(), ..Default::default() },
+        tach: TachSettings { times: Some("times.txt".to_owned()), ..Default::default() },
+        select: Selection::default(),
+        analyses,
+        base: dir.to_owned(),
+        threads: 2,
+    }
+}
+
+fn run(job: &Job) -> RunResult {
+    execute(job, &Control { progress: &|_| {}, cancel: &AtomicBool::new(false) }).unwrap()
+}
+
+fn spectrum(result: &RunResult) -> &SpectrumResult {
+    result
+        .analyses
+        .iter()
+        .find_map(|o| if let AnalysisResult::Spectrum(s) = &o.result { Some(s) } else { None })
+        .unwrap()
+}
+
+fn synchronous(result: &RunResult) -> &SynchronousResult {
+    result
+        .analyses
+        .iter()
+        .find_map(|o| if let AnalysisResult::Synchronous(s) = &o.result { Some(s) } else { None })
+        .unwrap()
+}
+
+fn comparison(result: &RunResult) -> &CompareResult {
+    result
+        .analyses
+        .iter()
+        .find_map(|o| if let AnalysisResult::Compare(s) = &o.result { Some(s) } else { None })
+        .unwrap()
+}
+
+fn sensor(name: &str, orders: &[(f64, f64, f64)], tones: &[(f64, f64)], noise: f64) -> Channel {
+    Channel {
+        orders: orders.iter().map(|(k, a, p)| Order::new(*k, *a, *p)).collect(),
+        tones: tones.iter().map(|(f, a)| Tone::new(*f, *a, 10.0)).collect(),
+        noise: if noise > 0.0 { vec![Noise::White { rms: noise }] } else { Vec::new() },
+        ..Channel::new(name, "acceleration", "m/s²")
+    }
+}
+
+fn db(ratio: f64) -> f64 {
+    20.0 * ratio.log10()
+}
+
+#[test]
+fn orders_keep_level_and_phase_while_the_speed_drifts() {
+    let dir = tempfile::tempdir().unwrap();
+    let mut recipe = Recipe::new(12800.0, 30.0, Speed::constant(25.0).with_wobble(1.2, 0.31, 40.0));
+    let orders = [(1.0, 2.0, 30.0), (6.0, 1.0, -100.0), (23.0, 0.5, 170.0), (4.87, 0.7, 0.0), (47.0, 0.1, 5.0)];
+    recipe.channels = vec![
+        Channel { bias: 200.0, ..sensor("DE", &orders, &[], 0.0) },
+        Channel::tach(PulseTrain::once_per_rev()),
+    ];
+    write(dir.path(), &recipe);
+    let settings = SynchronousSettings { channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]), ..Default::default() };
+    let window = SpectrumSettings {
+        channel: settings.channel.clone(),
+        window: WindowChoice::Kaiser,
+        ..Default::default()
+    };
+    let result =
+        run(&job(dir.path(), vec![Analysis::Spectrum(window), Analysis::Synchronous(settings)]));
+    let channel = &spectrum(&result).channels[0];
+    assert_eq!(channel.orders.as_ref().unwrap().len(), 801);
+    for (order, amplitude, _) in orders {
+        let peak = channel.peaks.iter().find(|p| (p.order.unwrap() - order).abs() < 0.01).unwrap();
+        let error = db(peak.rms * std::f64::consts::SQRT_2 / amplitude);
+        assert!(error.abs() < 0.01, "order {order}: {error} dB");
+    }
+    assert_eq!(channel.peaks.len(), orders.len(), "{:?}", channel.peaks);
+    let channel = &synchronous(&result).channels[0];
+    for (order, amplitude, phase) in [orders[0], orders[1], orders[2], orders[4]] {
+        let k = order as usize;
+        // Order 4.87 leaks into the comb by at most 1/(N sin) of it: compare there loosely.
+        assert!(db(channel.amplitude_peak[k] / amplitude).abs() < 0.05, "{order}");
+        let miss = (channel.phase_lead_deg[k] - phase + 180.0).rem_euclid(360.0) - 180.0;
+        assert!(miss.abs() < 0.5, "order {order}: {miss}°");
+    }
+}
+
+#[test]
+fn the_cut_off_follows_the_speed() {
+    // Pure orders beyond the highest one, and far tones, while the speed swings by a fifth: nothing
+    // above −100 dB of them at or below the highest order (Kaiser β 18).
+    for (orders, tones) in
+        [(vec![52.5, 60.3, 79.9], vec![]), (vec![], vec![1700.0, 2500.0, 4100.0, 5900.0])]
+    {
+        let dir = tempfile::tempdir().unwrap();
+        let mut recipe = Recipe::new(12800.0, 25.0, Speed::constant(20.0).with_wobble(4.0, 0.2, 0.0));
+        let list: Vec<_> = orders.iter().map(|o| (*o, 1.0, 0.0)).collect();
+        let tones: Vec<_> = tones.iter().map(|t| (*t, 1.0)).collect();
+        recipe.channels = vec![sensor("DE", &list, &tones, 0.0), Channel::tach(PulseTrain::once_per_rev())];
+        write(dir.path(), &recipe);
+        let settings = SpectrumSettings {
+            window: WindowChoice::Kaiser,
+            channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]),
+            ..Default::default()
+        };
+        let result = run(&job(dir.path(), vec![Analysis::Spectrum(settings)]));
+        let worst = spectrum(&result).channels[0].rms.iter().copied().fold(0.0, f64::max);
+        let worst = db(worst * std::f64::consts::SQRT_2);
+        println!("{orders:?} {tones:?}: {worst:.1} dB");
+        assert!(worst < -100.0, "{worst}");
+    }
+}
+
+#[test]
+fn any_number_of_threads_gives_the_same_bits() {
+    let dir = tempfile::tempdir().unwrap();
+    let mut recipe = Recipe::new(6400.0, 40.0, Speed::constant(30.0).with_wobble(1.0, 0.5, 0.0));
+    recipe.channels =
+        vec![sensor("A", &[(1.0, 1.0, 0.0), (7.0, 1.0, 0.0)], &[(100.0, 0.3)], 0.2), Channel::tach(PulseTrain::once_per_rev())];
+    write(dir.path(), &recipe);
+    let analyses = vec![
+        Analysis::Speed(SpeedSettings::default()),
+        Analysis::Spectrum(SpectrumSettings::default()),
+        Analysis::Spectrum(SpectrumSettings { axis: AxisChoice::Hz, ..Default::default() }),
+        Analysis::Spectrum(SpectrumSettings { shown_as: Some(ShownAs::Velocity), channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]), ..Default::default() }),
+        Analysis::Synchronous(SynchronousSettings::default()),
+        Analysis::Compare(CompareSettings::default()),
+    ];
+    let mut job = job(dir.path(), analyses);
+    job.recording.channels =
+        vec![shaftwise_run::ChannelSettings { unit: Some("m/s2".to_owned()), ..Default::default() }];
+    job.select.exclude = vec![shaftwise_run::Exclusion { from_s: 17.0, to_s: 18.2, reason: None }];
+    let text = |threads: usize| {
+        let result = run(&Job { threads, ..job.clone() });
+        serde_json::to_string(&result.analyses.iter().map(|o| &o.result).collect::<Vec<_>>()).unwrap()
+    };
+    let one = text(1);
+    for threads in [2, 3, 7] {
+        assert!(one == text(threads), "{threads} threads differ from one");
+    }
+}
+
+#[test]
+fn comparison_shows_what_smearing_spread() {
+    let dir = tempfile::tempdir().unwrap();
+    let mut recipe = Recipe::new(6400.0, 60.0, Speed::constant(25.0).with_wobble(0.6, 0.13, 0.0));
+    recipe.channels = vec![
+        sensor("A", &[(1.0, 1.0, 0.0), (12.0, 1.0, 0.0), (40.0, 1.0, 0.0)], &[], 0.05),
+        Channel::tach(PulseTrain::once_per_rev()),
+    ];
+    write(dir.path(), &recipe);
+    let settings =
+        CompareSettings { channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]), ..Default::default() };
+    let result = run(&job(dir.path(), vec![Analysis::Compare(settings)]));
+    let compared = comparison(&result);
+    assert!(!compared.plain_is_good_enough);
+    let channel = &compared.channels[0];
+    println!("{:#?}\n{:?}", channel.peaks, channel.onset);
+    for order in [12.0, 40.0] {
+        let peak = channel.peaks.iter().find(|p| (p.order - order).abs() < 0.01).unwrap();
+        assert!(db(peak.tracked_rms * std::f64::consts::SQRT_2).abs() < 0.02);
+        assert!(peak.loss_db > 3.0);
+        assert!(db(peak.smeared_summed_rms / peak.tracked_summed_rms).abs() < 0.2);
+        assert!(peak.smeared_width_orders > 2.0 * peak.tracked_width_orders);
+    }
+}
+
+#[test]
+fn velocity_comes_from_acceleration_above_twice_the_corner() {
+    let dir = tempfile::tempdir().unwrap();
+    let mut recipe = Recipe::new(12800.0, 20.0, Speed::constant(24.0).with_wobble(0.5, 0.2, 0.0));
+    // One order at a time has a closed form only at steady speed; tones do while it drifts.
+    recipe.channels = vec![
+        Channel { bias: 50.0, ..sensor("A", &[], &[(159.2, 10.0), (25.0, 1.0), (900.0, 3.0)], 0.0) },
+        Channel::tach(PulseTrain::once_per_rev()),
+    ];
+    write(dir.path(), &recipe);
+    let settings = SpectrumSettings {
+        channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]),
+        axis: AxisChoice::Hz,
+        shown_as: Some(ShownAs::Velocity),
+        ..Default::default()
+    };
+    let mut job = job(dir.path(), vec![Analysis::Spectrum(settings)]);
+    job.recording.channels =
+        vec![shaftwise_run::ChannelSettings { unit: Some("m/s2".to_owned()), ..Default::default() }];
+    let result = run(&job);
+    let channel = &spectrum(&result).channels[0];
+    assert_eq!(channel.channel.unit, "mm/s");
+    for (frequency, amplitude) in [(159.2, 10.0), (25.0, 1.0), (900.0, 3.0)] {
+        let peak =
+            channel.peaks.iter().find(|p| (p.frequency_hz.unwrap() - frequency).abs() < 0.2).unwrap();
+        let expected = 1000.0 * amplitude / (2.0 * std::f64::consts::PI * frequency * std::f64::consts::SQRT_2);
+        assert!(db(peak.rms / expected).abs() < 0.02, "{frequency}: {} dB", db(peak.rms / expected));
+    }
+}
