@@ -79,23 +79,19 @@ pub struct HalfBand {
     odd: Vec<f64>,
     /// Index, in pairs of input samples, of the first element of both buffers.
     first: u64,
+    /// The first sample pushed has an odd index and no even one before it: no output needs it.
+    skip: bool,
 }
 
 impl HalfBand {
-    /// A stage whose first input sample will be `first_input`, an even index.
-    ///
-    /// # Panics
-    /// If `first_input` is odd.
+    /// A stage whose first input sample will be sample `first_input` of its signal.
     #[must_use]
     pub fn new(first_input: u64) -> Self {
-        assert!(
-            first_input.is_multiple_of(2),
-            "a stage starts at an even sample, found {first_input}"
-        );
         Self {
             even: Vec::new(),
             odd: Vec::new(),
-            first: first_input / 2,
+            first: first_input.div_ceil(2),
+            skip: !first_input.is_multiple_of(2),
         }
     }
 
@@ -111,6 +107,12 @@ impl HalfBand {
     /// gives the same bits.
     pub fn push(&mut self, plan: &PyramidPlan, input: &[f64], out: &mut Vec<f64>) {
         let mut input = input;
+        if self.skip
+            && let Some((_, rest)) = input.split_first()
+        {
+            self.skip = false;
+            input = rest;
+        }
         if self.even.len() > self.odd.len()
             && let Some((first, rest)) = input.split_first()
         {
@@ -186,6 +188,11 @@ mod tests {
         for (n, y) in whole.iter().enumerate() {
             assert!((y - (0.4 * (62 + n) as f64).cos()).abs() < 4e-7);
         }
+        let mut from_odd = Vec::new();
+        let mut stage = HalfBand::new(101);
+        assert_eq!(stage.next_output(), 63);
+        stage.push(&plan, &input[1..], &mut from_odd);
+        assert_eq!(from_odd, whole[1..]);
         for split in [1, 2, 3, 7, 64, 1000] {
             let mut stage = HalfBand::new(100);
             let mut parts = Vec::new();
