@@ -1,0 +1,352 @@
+//! The rotation of a shaft: angle over time, with its uncertainty and its ledger.
+
+use crate::numbering::{self, Numbering};
+use crate::section::Motion;
+use crate::smoother;
+use crate::{Error, LedgerAction, LedgerEntry, Section};
+use shaftwise_signal::SamplePosition;
+
+/// What the zero of the angle means.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum PhaseReference {
+    /// Angle 0 is the timed edge of the one pulse per revolution.
+    Pulse,
+    /// Angle 0 is the edge of some tooth: known up to a multiple of one tooth.
+    Arbitrary,
+    /// Angle 0 means nothing.
+    None,
+}
+
+/// How the pulses were counted.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub struct PulseCount {
+    /// Pulses found and timed.
+    pub timed: u64,
+    /// Pulses that belong to a tooth: timed less rejected.
+    pub used: u64,
+    /// Teeth without a pulse.
+    pub inserted: u64,
+    /// Pulses that belong to no tooth.
+    pub rejected: u64,
+}
+
+/// What must be known beside the pulses.
+#[derive(Debug, Clone, PartialEq)]
+pub struct RotationConfig {
+    /// Sample rate of the recording in Hz.
+    pub sample_rate_hz: f64,
+    /// Length of the recording in samples; pulses beyond it are left out.
+    pub total_samples: u64,
+    /// Pulses per revolution. Range: 1 to 4096.
+    pub pulses_per_rev: u32,
+}
+
+/// The angle of a shaft as a function of time.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Rotation {
+    /// Sample rate of the recording in Hz.
+    pub sample_rate_hz: f64,
+    /// Stretches without a break, in order.
+    pub sections: Vec<Section>,
+    /// What the zero of the angle means.
+    pub phase_reference: PhaseReference,
+    /// Every repair, in time order.
+    pub ledger: Vec<LedgerEntry>,
+    /// How the pulses were counted.
+    pub pulses: PulseCount,
+    /// Standard deviation of a pulse's instant as found in the data, in seconds.
+    pub timing_sigma_s: f64,
+    /// Pulses per revolution.
+    pub pulses_per_rev: u32,
+    /// Width of the timed edge (10 to 90 %) in degrees at the mean speed, where a channel was scanned.
+    pub edge_width_deg: Option<f64>,
+    /// Width of the pulse in degrees at the mean speed, where a channel was scanned.
+    pub pulse_width_deg: Option<f64>,
+    /// What is doubtful, in words.
+    pub warnings: Vec<String>,
+}
+
+/// Speed at even steps of time.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct SpeedCurve {
+    /// Seconds from the first sample.
+    pub time_s: Vec<f64>,
+    /// Revolutions since the rotation's first pulse.
+    pub revs: Vec<f64>,
+    /// Speed in rpm.
+    pub rpm: Vec<f64>,
+    /// One standard deviation of the speed in rpm.
+    pub rpm_sigma: Vec<f64>,
+}
+
+/// The rotation behind a list of pulse times, in seconds from the first sample, rising.
+///
+/// # Errors
+///
+/// Settings out of range, times out of order or not finite, fewer than [`LEAST_PULSES`]
+/// usable pulses.
+pub fn rotation_from_times(times_s: &[f64], config: &RotationConfig) -> Result<Rotation, Error> {
+    check(config)?;
+    let mut previous = f64::NEG_INFINITY;
+    let mut positions = Vec::with_capacity(times_s.len());
+    for (index, &time) in times_s.iter().enumerate() {
+        if !(time.is_finite() && time > previous) {
+            return Err(Error::TimeOrder {
+                number: index + 1,
+                found: time,
+                previous,
+            });
+        }
+        previous = time;
+        if time >= 0.0 {
+            positions.push(SamplePosition::from_seconds(time, config.sample_rate_hz));
+        }
+    }
+    let outside = |p: &SamplePosition| p.index < config.total_samples;
+    positions.retain(outside);
+    let mut warnings = Vec::new();
+    let left_out = times_s.len() - positions.len();
+    if left_out > 0 {
+        warnings.push(format!(
+            "{left_out} pulse times lie outside the recording and are left out"
+        ));
+    }
+    assemble(&positions, 0.0, config, warnings)
+}
+
+/// Fewest pulses a section is made of: a polynomial of degree 4 goes through any five.
+pub const LEAST_PULSES: usize = 6;
+
+fn check(config: &RotationConfig) -> Result<(), Error> {
+    if !(config.sample_rate_hz > 0.0 && config.sample_rate_hz.is_finite()) {
+        return Err(Error::SampleRate {
+            found: config.sample_rate_hz,
+        });
+    }
+    if !(1..=4096).contains(&config.pulses_per_rev) {
+        return Err(Error::PulsesPerRev {
+            found: config.pulses_per_rev,
+            most: 4096,
+        });
+    }
+    Ok(())
+}
+
+/// `edge_sigma`: what is known of the edges' own timing noise, in samples.
+pub(crate) fn assemble(
+    positions: &[SamplePosition],
+    edge_sigma: f64,
+    config: &RotationConfig,
+    mut warnings: Vec<String>,
+) -> Result<Rotation, Error> {
+    let rate = config.sample_rate_hz;
+    if positions.len() < LEAST_PULSES {
+        return Err(Error::TooFewPulses {
+            found: positions.len(),
+            least: LEAST_PULSES,
+        });
+    }
+    let Numbering {
+        mut stretches,
+        mut ledger,
+        rejected,
+        warnings: doubts,
+    } = numbering::number(positions);
+    warnings.extend(doubts);
+    let (smoothing, fits) = smoother::smooth(&mut stretches, config.pulses_per_rev, edge_sigma)?;
+    let per_rev = i64::from(config.pulses_per_rev);
+    let mut sections = Vec::with_capacity(fits.len());
+    let mut inserted = 0;
+    for (pulses, mut fit) in stretches.into_iter().zip(fits) {
+        for sigma in &mut fit.sigma {
+            // From 1/(samples per rev) to rev/s.
+            sigma[1] *= rate as f32;
+        }
+        let first = pulses[0].tooth;
+        let section = Section {
+            first_rev: first.div_euclid(per_rev),
+            first_fraction: first.rem_euclid(per_rev) as f64 / per_rev as f64,
+            span_knots: fit.span_knots,
+            knots_per_rev: fit.knots_per_rev,
+            sample_rate_hz: rate,
+            motion: Motion::Spline {
+                origin: fit.origin,
+                bits: fit.bits,
+                coefficients: fit.coefficients,
+                sigma: fit.sigma,
+            },
+        };
+        for (index, off) in fit.dropped {
+            let pulse = &pulses[index];
+            let speed = section.speed_at(pulse.position);
+            ledger.push(LedgerEntry {
+                time_s: pulse.position.seconds(rate),
+                action: LedgerAction::Moved,
+                reason: format!(
+                    "pulse {:+.1} us ({:+.3} deg) off the smooth motion; its instant is not used",
+                    off / rate * 1e6,
+                    off / rate * speed * 360.0
+                ),
+            });
+        }
+        for pair in pulses.windows(2) {
+            for tooth in pair[0].tooth + 1..pair[1].tooth {
+                inserted += 1;
+                let instant = section.at(
+                    tooth.div_euclid(per_rev),
+                    tooth.rem_euclid(per_rev) as f64 / per_rev as f64,
+                );
+                ledger.push(LedgerEntry {
+                    time_s: instant.position.seconds(rate),
+                    action: LedgerAction::Inserted,
+                    reason: "no pulse where one was due".to_owned(),
+                });
+            }
+        }
+        sections.push(section);
+    }
+    ledger.sort_by(|a, b| a.time_s.total_cmp(&b.time_s));
+    let timed = positions.len() as u64;
+    Ok(Rotation {
+        sample_rate_hz: rate,
+        sections,
+        phase_reference: if config.pulses_per_rev == 1 {
+            PhaseReference::Pulse
+        } else {
+            PhaseReference::Arbitrary
+        },
+        ledger,
+        pulses: PulseCount {
+            timed,
+            used: timed - rejected,
+            inserted,
+            rejected,
+        },
+        timing_sigma_s: smoothing.sigma / rate,
+        pulses_per_rev: config.pulses_per_rev,
+        edge_width_deg: None,
+        pulse_width_deg: None,
+        warnings,
+    })
+}
+
+impl Rotation {
+    /// A shaft that turns steadily at `speed_rev_s` for `revs` revolutions from `start`.
+    ///
+    /// # Panics
+    ///
+    /// If the rate or the speed is not positive and finite, or there are no revolutions.
+    #[must_use]
+    pub fn steady(sample_rate_hz: f64, start: SamplePosition, revs: u64, speed_rev_s: f64) -> Self {
+        let samples_per_rev = sample_rate_hz / speed_rev_s;
+        assert!(
+            samples_per_rev > 0.0 && samples_per_rev < 1e15 && revs > 0,
+            "{revs} revolutions at {speed_rev_s} rev/s and {sample_rate_hz} Hz"
+        );
+        let whole = samples_per_rev.floor();
+        let section = Section {
+            first_rev: 0,
+            first_fraction: 0.0,
+            span_knots: revs as f64,
+            knots_per_rev: 1,
+            sample_rate_hz,
+            motion: Motion::Steady {
+                start,
+                whole: whole as u64,
+                rest: samples_per_rev - whole,
+            },
+        };
+        Self {
+            sample_rate_hz,
+            sections: vec![section],
+            phase_reference: PhaseReference::None,
+            ledger: Vec::new(),
+            pulses: PulseCount::default(),
+            timing_sigma_s: 0.0,
+            pulses_per_rev: 1,
+            edge_width_deg: None,
+            pulse_width_deg: None,
+            warnings: Vec::new(),
+        }
+    }
+
+    /// Revolutions in all sections.
+    #[must_use]
+    pub fn revs(&self) -> f64 {
+        self.sections.iter().map(Section::span_rev).sum()
+    }
+
+    /// Seconds in all sections.
+    #[must_use]
+    pub fn seconds(&self) -> f64 {
+        let samples: f64 = self.sections.iter().map(|s| s.end().since(s.start())).sum();
+        samples / self.sample_rate_hz
+    }
+
+    /// Mean speed in rev/s: revolutions over seconds.
+    #[must_use]
+    pub fn mean_speed(&self) -> f64 {
+        self.revs() / self.seconds()
+    }
+
+    /// Lowest and highest speed at the knots, in rev/s.
+    #[must_use]
+    pub fn speed_range(&self) -> (f64, f64) {
+        self.sections
+            .iter()
+            .flat_map(Section::knot_speeds)
+            .fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), s| {
+                (a.min(s), b.max(s))
+            })
+    }
+
+    /// Standard deviation of the angle in degrees, root mean square over the run.
+    #[must_use]
+    pub fn angle_sigma_deg(&self) -> f64 {
+        let (mut squares, mut count) = (0.0, 0u64);
+        for section in &self.sections {
+            if let Motion::Spline { sigma, .. } = &section.motion {
+                count += sigma.len() as u64;
+                squares += sigma.iter().map(|s| f64::from(s[0]).powi(2)).sum::<f64>();
+            }
+        }
+        if count == 0 {
+            0.0
+        } else {
+            360.0 * (squares / count as f64).sqrt()
+        }
+    }
+
+    /// The order at which the angle's scatter makes 10 degrees of phase (common practice);
+    /// infinite where the angle has no scatter.
+    #[must_use]
+    pub fn highest_trusted_order(&self) -> f64 {
+        10.0 / self.angle_sigma_deg()
+    }
+
+    /// Speed every `step_s` seconds from the start of each section to its end.
+    ///
+    /// # Panics
+    ///
+    /// If the step is not positive.
+    #[must_use]
+    pub fn curve(&self, step_s: f64) -> SpeedCurve {
+        assert!(step_s > 0.0, "a step of {step_s} s");
+        let mut curve = SpeedCurve::default();
+        let step = step_s * self.sample_rate_hz;
+        for section in &self.sections {
+            let start = section.start();
+            let steps = (section.end().since(start) / step).floor() as u64;
+            for i in 0..=steps {
+                let offset = start.fraction + i as f64 * step;
+                let position = SamplePosition::new(start.index, offset);
+                let (rev, fraction) = section.angle_at(position);
+                curve.time_s.push(position.seconds(self.sample_rate_hz));
+                curve.revs.push(rev as f64 + fraction);
+                curve.rpm.push(60.0 * section.speed_at(position));
+                curve.rpm_sigma.push(60.0 * section.sigma_at(position).1);
+            }
+        }
+        curve
+    }
+}
