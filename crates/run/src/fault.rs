@@ -66,8 +66,13 @@ impl Fault {
     /// What was found and what was expected, for the run file.
     #[must_use]
     pub fn message(&self) -> String {
+        self.message_about(&subject(&self.pointer))
+    }
+
+    /// The same, of a value under another name, such as that of a flag.
+    #[must_use]
+    pub fn message_about(&self, subject: &str) -> String {
         let (found, expected) = (&self.found, &self.expected);
-        let subject = subject(&self.pointer);
         match self.kind {
             FaultKind::Value => format!("{subject} is {found}; expected {expected}"),
             FaultKind::Missing => format!("{subject} is missing; expected {expected}"),
