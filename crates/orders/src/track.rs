@@ -5,7 +5,7 @@
 //! shaft that is tach angle i·B/(M·A): split into whole revolutions and a remainder in whole numbers,
 //! so no ratio and no length of recording wears the angle out.
 
-use shaftwise_rotation::{Piece, Ratio, Rotation};
+use shaftwise_rotation::{Piece, Rotation};
 use shaftwise_signal::{InterpolationPlan, PyramidPlan, SamplePosition};
 use std::sync::Arc;
 
@@ -50,15 +50,15 @@ pub struct Track {
 }
 
 impl Track {
-    /// Lays a grid of `samples_per_rev` (at least 1) over the shaft that turns by `ratio` of the
-    /// rotation's shaft.
+    /// Lays a grid of `samples_per_rev` over the shaft that turns `turns` times per `per` turns of
+    /// the rotation's shaft; all three are at least 1.
     ///
     /// # Panics
-    /// If `samples_per_rev` is 0.
+    /// If one of them is 0.
     #[must_use]
-    pub fn new(rotation: Arc<Rotation>, ratio: Ratio, samples_per_rev: u32) -> Self {
-        assert!(samples_per_rev > 0, "an angle grid needs at least one sample per revolution");
-        Self { rotation, turns: i128::from(ratio.turns()), per: i128::from(ratio.per()), samples_per_rev }
+    pub fn new(rotation: Arc<Rotation>, turns: u64, per: u64, samples_per_rev: u32) -> Self {
+        assert!(turns > 0 && per > 0 && samples_per_rev > 0, "a grid of {samples_per_rev} samples at {turns}/{per}");
+        Self { rotation, turns: i128::from(turns), per: i128::from(per), samples_per_rev }
     }
 
     /// The rotation.

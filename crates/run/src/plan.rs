@@ -343,7 +343,12 @@ impl Planner<'_> {
             return Ok(place);
         }
         let limits = Limits { total_samples: self.recording.frames(), filter_reach: setup.filter_reach };
-        let turning = Track::new(self.spinning.rotation.clone(), setup.ratio, setup.samples_per_rev);
+        let turning = Track::new(
+            self.spinning.rotation.clone(),
+            setup.ratio.turns(),
+            setup.ratio.per(),
+            setup.samples_per_rev,
+        );
         let stretches: Vec<_> = self
             .spinning
             .windows
@@ -377,7 +382,7 @@ impl Planner<'_> {
             }
             let mut rotation = Rotation::steady(self.recording.sample_rate_hz(), SamplePosition::default(), 1, speed);
             rotation.sections = sections;
-            let track = Track::new(Arc::new(rotation), Ratio::ONE, setup.samples_per_rev);
+            let track = Track::new(Arc::new(rotation), 1, 1, setup.samples_per_rev);
             let stretches = all
                 .into_iter()
                 .map(|part| part.and_then(|(section, from, to)| track.stretch(section, from, to, limits)))
