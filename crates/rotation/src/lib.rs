@@ -10,17 +10,21 @@
 //! Angle is in revolutions of the tach shaft, speed in rev/s, positions in samples of the
 //! recording. Nothing is known outside the pulses and nothing is made up there.
 
+mod edge;
 mod error;
 mod ledger;
 mod numbering;
 mod rotation;
 mod section;
 mod smoother;
+mod swing;
+mod tach;
 
 pub use error::Error;
 pub use ledger::{LedgerAction, LedgerEntry};
 pub use rotation::{
     LEAST_PULSES, PhaseReference, PulseCount, Rotation, RotationConfig, SpeedCurve,
-    rotation_from_times,
+    rotation_from_scan, rotation_from_times,
 };
 pub use section::{AngleInstant, Piece, Section};
+pub use tach::{Edge, TachConfig, TachScan, TachScanner, TimedEdge};

@@ -3,7 +3,7 @@
 use crate::numbering::{self, Numbering};
 use crate::section::Motion;
 use crate::smoother;
-use crate::{Error, LedgerAction, LedgerEntry, Section};
+use crate::{Error, LedgerAction, LedgerEntry, Section, TachScan};
 use shaftwise_signal::SamplePosition;
 
 /// What the zero of the angle means.
@@ -112,6 +112,27 @@ pub fn rotation_from_times(times_s: &[f64], config: &RotationConfig) -> Result<R
         ));
     }
     assemble(&positions, 0.0, config, warnings)
+}
+
+/// The rotation behind the edges of a tach channel.
+///
+/// # Errors
+///
+/// Settings out of range, fewer than [`LEAST_PULSES`] usable pulses.
+pub fn rotation_from_scan(scan: &TachScan, config: &RotationConfig) -> Result<Rotation, Error> {
+    check(config)?;
+    let positions: Vec<SamplePosition> = scan
+        .edges
+        .iter()
+        .map(|edge| edge.position)
+        .filter(|position| position.index < config.total_samples)
+        .collect();
+    let edge_sigma = scan.edge_sigma_s * config.sample_rate_hz;
+    let mut rotation = assemble(&positions, edge_sigma, config, scan.warnings.clone())?;
+    let degrees = 360.0 * rotation.mean_speed();
+    rotation.edge_width_deg = Some(scan.edge_width_s * degrees);
+    rotation.pulse_width_deg = Some(scan.pulse_width_s * degrees);
+    Ok(rotation)
 }
 
 /// Fewest pulses a section is made of: a polynomial of degree 4 goes through any five.

@@ -107,3 +107,91 @@ pub(crate) fn scatter(values: &[f64]) -> (f64, f64) {
         values.iter().fold(0.0, |m, v| m.max((v - mean).abs())),
     )
 }
+
+/// How long an edge takes, or a pulse.
+#[derive(Clone, Copy)]
+pub(crate) enum Length {
+    Seconds(f64),
+    Degrees(f64),
+}
+
+/// A tach: straight edges, sampled at points. The leading edge's middle stands at whole
+/// multiples of 1/`per_rev` revolutions.
+#[derive(Clone)]
+pub(crate) struct Tach {
+    pub(crate) rate: f64,
+    pub(crate) per_rev: u32,
+    pub(crate) edge: Length,
+    pub(crate) width: Length,
+    pub(crate) low: f64,
+    pub(crate) high: f64,
+    pub(crate) noise: f64,
+    pub(crate) drift_per_s: f64,
+    /// Step of the converter.
+    pub(crate) step: f64,
+}
+
+impl Tach {
+    pub(crate) fn plain(rate: f64) -> Self {
+        Self {
+            rate,
+            per_rev: 1,
+            edge: Length::Seconds(100e-6),
+            width: Length::Degrees(20.0),
+            low: 0.2,
+            high: 4.8,
+            noise: 0.0,
+            drift_per_s: 0.0,
+            step: 0.0,
+        }
+    }
+
+    /// Pulses at these instants of the leading edge.
+    pub(crate) fn sample(&self, motion: &Motion, instants: &[f64], seconds: f64) -> Vec<f64> {
+        let n = (seconds * self.rate) as usize;
+        let mut level = vec![0.0f64; n];
+        for &t in instants {
+            let speed = motion.speed(t);
+            let seconds_of = |length| match length {
+                Length::Seconds(s) => s,
+                Length::Degrees(d) => d / 360.0 / speed,
+            };
+            let angle = motion.angle(t);
+            // Position along an edge whose middle is at instant `at`, from −½ to ½.
+            let along = |time: f64, at: f64| match self.edge {
+                Length::Seconds(s) => (time - at) / s,
+                Length::Degrees(d) => (motion.angle(time) - motion.angle(at)) / (d / 360.0),
+            };
+            let end = match self.width {
+                Length::Seconds(s) => t + s,
+                Length::Degrees(d) => motion.time(angle + d / 360.0, t),
+            };
+            let margin = 1.5 * seconds_of(self.edge);
+            let first = ((t - margin) * self.rate).max(0.0) as usize;
+            let last = (((end + margin) * self.rate) as usize).min(n);
+            for i in first..last {
+                let time = i as f64 / self.rate;
+                let up = (0.5 + along(time, t)).clamp(0.0, 1.0);
+                let down = (0.5 - along(time, end)).clamp(0.0, 1.0);
+                level[i] = level[i].max(up.min(down));
+            }
+        }
+        let mut dice = Dice(11);
+        level
+            .iter()
+            .enumerate()
+            .map(|(i, l)| {
+                let mut x =
+                    self.low + (self.high - self.low) * l + self.drift_per_s * i as f64 / self.rate;
+                if self.noise > 0.0 {
+                    x += self.noise * dice.normal();
+                }
+                if self.step > 0.0 {
+                    (x / self.step).round() * self.step
+                } else {
+                    x
+                }
+            })
+            .collect()
+    }
+}
