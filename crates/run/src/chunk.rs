@@ -138,8 +138,21 @@ impl<'a> PassTwo<'a> {
 pub(crate) struct Space {
     bytes: Vec<u8>,
     decoded: Vec<Vec<f64>>,
+    halved: [Vec<f64>; 2],
+    signals: Vec<Signal>,
+    grid: Vec<Vec<f64>>,
+    converted: Vec<Vec<f64>>,
     taps: Taps,
     spectra: BTreeMap<(usize, usize), SpectrumScratch>,
+}
+
+/// All channels of a chunk at one level.
+#[derive(Default)]
+struct Signal {
+    level: u32,
+    /// Index of the first sample, at the level's rate.
+    start: u64,
+    channels: Vec<Vec<f64>>,
 }
 
 /// One track's part of a chunk.
@@ -192,11 +205,11 @@ impl PassTwo<'_> {
         let mut wanted: Vec<u32> = active().map(|(_, part)| part.level).collect();
         wanted.sort_unstable();
         wanted.dedup();
-        let signals = self.signals(from, to, &channels, &wanted, space)?;
+        self.fill_signals(from, to, &channels, &wanted, space)?;
 
         for (number, part) in active() {
             let work = &self.tracks[number];
-            let grid = self.resample(number, part, &channels, &signals, space)?;
+            self.resample(number, part, &channels, space)?;
             for (index, (consumer, sums)) in work.consumers.iter().zip(&mut sums[number]).enumerate() {
                 let before: u64 = consumer.blocks[..chunk.window].iter().sum();
                 let total = consumer.total_blocks();
@@ -204,6 +217,7 @@ impl PassTwo<'_> {
                 for block in part.blocks[index].clone() {
                     let epoch = (EPOCHS as u64 * (before + block) / total) as usize;
                     let start = (stretch + block as i64 * consumer.hop as i64 - part.first) as usize;
+                    let grid = &space.grid;
                     let blocks = consumer.slots.iter().map(|slot| &grid[*slot][start..start + consumer.block]);
                     match (&mut *sums, &consumer.feed) {
                         (Sums::Spectrum(sums), Feed::Spectrum(plan)) => {
@@ -258,40 +272,37 @@ impl PassTwo<'_> {
         Some(Part { blocks, first, instants, level, from, to: to.min(self.recording.frames()) })
     }
 
-    /// Channels at the wanted levels: by level, by channel; with the index of each first sample.
-    fn signals(
+    /// Decodes the channels and halves their rate down to every wanted level, into `space.signals`.
+    fn fill_signals(
         &self,
         from: u64,
         to: u64,
         channels: &[usize],
         wanted: &[u32],
         space: &mut Space,
-    ) -> Result<BTreeMap<u32, (u64, Vec<Vec<f64>>)>, Error> {
+    ) -> Result<(), Error> {
         let top = wanted.last().copied().unwrap_or(0);
-        // Every level must start at an even sample of the one below.
-        let from = from >> (top + 1) << (top + 1);
         let mut stages: Vec<Vec<HalfBand>> = Vec::new();
         let mut starts = vec![from];
         for level in 0..top as usize {
-            // Rounded up to even, so that the next level starts on one.
             let stage = HalfBand::new(starts[level]);
-            let next = stage.next_output();
+            starts.push(stage.next_output());
             stages.push(vec![stage; channels.len()]);
-            starts.push(next);
         }
-        let mut signals: BTreeMap<u32, (u64, Vec<Vec<f64>>)> = wanted
-            .iter()
-            .map(|level| (*level, (starts[*level as usize], vec![Vec::new(); channels.len()])))
-            .collect();
+        space.signals.resize_with(wanted.len(), Signal::default);
+        for (signal, level) in space.signals.iter_mut().zip(wanted) {
+            signal.level = *level;
+            signal.start = starts[*level as usize];
+            signal.channels.resize_with(channels.len(), Vec::new);
+            signal.channels.iter_mut().for_each(Vec::clear);
+        }
         space.decoded.resize_with(channels.len(), Vec::new);
         let slab = slab_frames(self.recording);
-        let (mut input, mut output) = (Vec::new(), Vec::new());
+        let [input, output] = &mut space.halved;
         let mut first = from;
         while first < to {
             let frames = slab.min((to - first) as usize);
-            for samples in &mut space.decoded {
-                samples.clear();
-            }
+            space.decoded.iter_mut().for_each(Vec::clear);
             let read = self
                 .recording
                 .read(first, frames, channels, &mut space.bytes, &mut space.decoded)
@@ -303,23 +314,24 @@ impl PassTwo<'_> {
                 if let Some(place) = first_non_finite(samples) {
                     return Err(self.no_number(channels[number], first + place as u64));
                 }
-                if let Some((_, signal)) = signals.get_mut(&0) {
-                    signal[number].extend_from_slice(samples);
-                }
-                input.clear();
-                input.extend_from_slice(samples);
-                for level in 1..=top {
-                    output.clear();
-                    stages[level as usize - 1][number].push(&self.pyramid, &input, &mut output);
-                    if let Some((_, signal)) = signals.get_mut(&level) {
-                        signal[number].extend_from_slice(&output);
+                for level in 0..=top {
+                    let here: &[f64] = if level == 0 {
+                        samples
+                    } else {
+                        output.clear();
+                        let below: &[f64] = if level == 1 { samples } else { input };
+                        stages[level as usize - 1][number].push(&self.pyramid, below, output);
+                        std::mem::swap(input, output);
+                        input
+                    };
+                    if let Some(signal) = space.signals.iter_mut().find(|s| s.level == level) {
+                        signal.channels[number].extend_from_slice(here);
                     }
-                    std::mem::swap(&mut input, &mut output);
                 }
             }
             first += frames as u64;
         }
-        Ok(signals)
+        Ok(())
     }
 
     fn no_number(&self, channel: usize, sample: u64) -> Error {
@@ -334,65 +346,66 @@ impl PassTwo<'_> {
         }
     }
 
-    /// Grid samples of every slot of a track.
+    /// Grid samples of every slot of a track, into `space.grid`.
     fn resample(
         &self,
         number: usize,
         part: &Part,
         channels: &[usize],
-        signals: &BTreeMap<u32, (u64, Vec<Vec<f64>>)>,
         space: &mut Space,
-    ) -> Result<Vec<Vec<f64>>, Error> {
-        let (start, by_channel) = &signals[&part.level];
+    ) -> Result<(), Error> {
+        let signal =
+            space.signals.iter().find(|s| s.level == part.level).expect("every track's level was filled");
         let rate = self.recording.sample_rate_hz() / f64::from(1u32 << part.level);
-        let mut converted: Vec<Option<(u64, Vec<f64>)>> = Vec::new();
         let slots = &self.tracks[number].slots;
-        let channel_place =
-            |slot: &Slot| channels.binary_search(&slot.channel).expect("channels of every slot were read");
+        let samples_of = |slot: &Slot| {
+            let place = channels.binary_search(&slot.channel).expect("every slot's channel was read");
+            signal.channels[place].as_slice()
+        };
+        space.converted.resize_with(slots.len(), Vec::new);
         for (index, slot) in slots.iter().enumerate() {
-            converted.push(match slot.conversion {
-                None => None,
-                Some(conversion) => {
-                    let cell = &self.conversions[number][index][part.level as usize];
-                    let plan = match cell.get() {
-                        Some(plan) => plan,
-                        None => {
-                            let plan = ConversionPlan::new(conversion, rate).map_err(|e| Error::Setting {
-                                what: e.to_string(),
-                                hint: "the sample rate is too low for this conversion".to_owned(),
-                            })?;
-                            cell.get_or_init(|| plan)
-                        }
-                    };
-                    let mut out = Vec::new();
-                    plan.process(&by_channel[channel_place(slot)], &mut out);
-                    // m/s², mm/s and µm are a thousand apart for each integration.
-                    let unit = 1000f64.powi(-conversion.power);
-                    out.iter_mut().for_each(|x| *x *= unit);
-                    Some((start + ConversionPlan::reach(conversion, rate) as u64, out))
+            let Some(conversion) = slot.conversion else { continue };
+            let cell = &self.conversions[number][index][part.level as usize];
+            let plan = match cell.get() {
+                Some(plan) => plan,
+                None => {
+                    let plan = ConversionPlan::new(conversion, rate).map_err(|e| Error::Setting {
+                        what: e.to_string(),
+                        hint: "the sample rate is too low for this conversion".to_owned(),
+                    })?;
+                    cell.get_or_init(|| plan)
                 }
-            });
+            };
+            let out = &mut space.converted[index];
+            plan.process(samples_of(slot), out);
+            // m/s², mm/s and µm are a thousand apart for each integration.
+            let unit = 1000f64.powi(-conversion.power);
+            out.iter_mut().for_each(|x| *x *= unit);
         }
         let sources: Vec<(i64, &[f64])> = slots
             .iter()
-            .zip(&converted)
-            .map(|(slot, converted)| match converted {
-                Some((start, samples)) => (*start as i64, samples.as_slice()),
-                None => (*start as i64, by_channel[channel_place(slot)].as_slice()),
+            .zip(&space.converted)
+            .map(|(slot, converted)| match slot.conversion {
+                Some(conversion) => {
+                    let lost = ConversionPlan::reach(conversion, rate) as u64;
+                    ((signal.start + lost) as i64, converted.as_slice())
+                }
+                None => (signal.start as i64, samples_of(slot)),
             })
             .collect();
-        let mut grid: Vec<Vec<f64>> = sources.iter().map(|_| Vec::with_capacity(part.instants.len())).collect();
+        space.grid.resize_with(slots.len(), Vec::new);
+        space.grid.iter_mut().for_each(Vec::clear);
         let scale = f64::from(1u32 << part.level);
         let mask = (1u64 << part.level) - 1;
         for instant in &part.instants {
             let index = (instant.index >> part.level) as i64;
             let fraction = ((instant.index & mask) as f64 + instant.fraction) / scale;
             self.interpolation.taps(index, fraction, instant.step / scale, &mut space.taps);
-            for ((start, samples), out) in sources.iter().zip(&mut grid) {
+            for ((start, samples), out) in sources.iter().zip(&mut space.grid) {
                 out.push(space.taps.apply(&self.interpolation, samples, *start));
             }
         }
-        Ok(grid)
+        Ok(())
     }
 }
 

@@ -50,13 +50,13 @@ pub struct SpeedRange {
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
 pub struct PulseFacts {
     /// Edges timed.
-    pub timed: usize,
+    pub timed: u64,
     /// Edges used: timed less rejected.
-    pub used: usize,
+    pub used: u64,
     /// Teeth filled in where no edge was.
-    pub inserted: usize,
+    pub inserted: u64,
     /// Edges not believed.
-    pub rejected: usize,
+    pub rejected: u64,
 }
 
 /// One repair.
