@@ -39,6 +39,8 @@ pub(crate) struct Crossing {
 /// A timed crossing: samples from the snippet's first, variance in samples².
 pub(crate) struct Timed {
     pub(crate) offset: f64,
+    /// What the straight line through the samples on both sides of the level adds to it.
+    pub(crate) straight: f64,
     pub(crate) variance: f64,
 }
 
@@ -165,11 +167,25 @@ impl Crossing {
         }
         let kept = 1.0 / (2.0 * std::f64::consts::PI.sqrt() * sigma);
         let variance = self.noise * self.noise * kept / (slope * slope);
-        Some(Timed { offset, variance })
+        let straight = self.snippet.straight(offset, level, self.up).map_or(0.0, |at| at - offset);
+        Some(Timed { offset, straight, variance })
     }
 }
 
 impl Snippet {
+    /// Where the line through two neighbouring samples crosses the level, nearest to `tau`.
+    fn straight(&self, tau: f64, level: f64, up: bool) -> Option<f64> {
+        let first = (tau - 2.0).ceil().max(0.0) as usize;
+        let last = ((tau + 2.0).floor() as usize).min(self.samples.len().checked_sub(2)?);
+        (first..=last)
+            .filter_map(|at| {
+                let (a, b) = (self.samples[at], self.samples[at + 1]);
+                let crosses = if up { a < level && level <= b } else { a > level && level >= b };
+                crosses.then(|| at as f64 + (level - a) / (b - a))
+            })
+            .min_by(|a, b| (a - tau).abs().total_cmp(&(b - tau).abs()))
+    }
+
     /// s(τ) and s'(τ); beyond its ends the snippet repeats its last sample.
     fn smoothed(&self, tau: f64, sigma: f64) -> (f64, f64) {
         let first = (tau - REACH * sigma).ceil() as i64;

@@ -172,8 +172,12 @@ pub(crate) fn assemble(
         mut ledger,
         rejected,
         warnings: doubts,
-    } = numbering::number(positions);
+    } = numbering::number(positions, config.pulses_per_rev, edge_sigma, rate);
     warnings.extend(doubts);
+    if stretches.is_empty() {
+        let found = positions.len() - rejected as usize;
+        return Err(Error::TooFewPulses { found, least: LEAST_PULSES });
+    }
     let (smoothing, fits) = smoother::smooth(&mut stretches, config.pulses_per_rev, edge_sigma)?;
     let per_rev = i64::from(config.pulses_per_rev);
     let mut sections = Vec::with_capacity(fits.len());

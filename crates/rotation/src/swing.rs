@@ -60,7 +60,22 @@ pub(crate) fn smoothed(samples: &[f64], at: usize, taps: &[f64; HALF + 1]) -> f6
 fn smooth_run(samples: &[f64], first: usize, end: usize, out: &mut Vec<f64>) {
     let taps = taps();
     out.clear();
-    out.extend((first..end).map(|at| smoothed(samples, at, &taps)));
+    let inner = first.max(HALF)..end.min(samples.len().saturating_sub(HALF));
+    if inner.len() < HALF {
+        out.extend((first..end).map(|at| smoothed(samples, at, &taps)));
+        return;
+    }
+    out.extend((first..inner.start).map(|at| smoothed(samples, at, &taps)));
+    let start = out.len();
+    out.extend(samples[inner.clone()].iter().map(|x| taps[0] * x));
+    for (k, tap) in taps.iter().enumerate().skip(1) {
+        let before = &samples[inner.start - k..inner.end - k];
+        let after = &samples[inner.start + k..inner.end + k];
+        for ((sum, a), b) in out[start..].iter_mut().zip(before).zip(after) {
+            *sum += tap * (a + b);
+        }
+    }
+    out.extend((inner.end..end).map(|at| smoothed(samples, at, &taps)));
 }
 
 /// The view of a channel in which a swing was found.
@@ -89,7 +104,7 @@ impl Hysteresis {
     /// From the slab's own samples and the height of the pulses before it.
     pub(crate) fn of(samples: &[f64], typical: f64) -> Self {
         const LONG: usize = 256;
-        const SHORT: usize = 16;
+        const SHORT: usize = 4;
         let range = |block: &[f64]| {
             let (low, high) = extremes(block);
             high - low
@@ -108,33 +123,39 @@ impl Hysteresis {
         let (low, high) = extremes(samples);
         // A pulse touches two to four blocks: one stray alone does not set the scale.
         let pulse = long[3.min(long.len() - 1)].max(typical);
-        // Mean range of 16 normal deviates: 3.53 standard deviations; a quarter of the blocks
-        // has no edge unless there is one in nearly every block.
-        let noise = (short[short.len() / 4] / 3.53).min(0.1 * pulse);
-        let mut finest = f64::INFINITY;
-        for pair in samples.windows(2) {
-            let step = (pair[1] - pair[0]).abs();
-            finest = if step > 0.0 { finest.min(step) } else { finest };
-        }
-        // Steps of a converter; a channel of two values is all step.
-        let converter = if finest.is_finite() {
-            finest.min(0.16 * (high - low))
-        } else {
-            0.0
-        };
+        // One in ten groups of 4 normal deviates has a range below 0.98 standard deviations; one
+        // block in ten has no edge even where pulses follow each other closely.
+        let noise = (short[short.len() / 10] / 0.98).min(0.1 * pulse);
+        let converter = converter_step(samples, high - low);
         let smooth = pulse < 25.0 * noise;
         // White noise keeps 1/√(2√π·2) of itself.
         let seen = if smooth { 0.376 * noise } else { noise };
-        let step = (9.0 * seen)
-            .max(0.1 * pulse)
-            .max(2.5 * converter)
-            .max(0.1 * typical);
+        // A channel of two values is all step.
+        let converter = converter.min(0.16 * (high - low));
         Self {
-            step,
-            noise: noise.max(converter.min(0.02 * pulse) / 12f64.sqrt()),
+            step: (9.0 * seen)
+                .max(0.1 * pulse)
+                .max(2.5 * converter)
+                .max(0.1 * typical),
+            noise: noise.max(converter / 12f64.sqrt()),
             smooth,
         }
     }
+}
+
+/// Step of the converter, where every change is a whole number of them; else zero.
+fn converter_step(samples: &[f64], range: f64) -> f64 {
+    let changes = || samples.windows(2).map(|pair| (pair[1] - pair[0]).abs());
+    let finest = changes().fold(f64::INFINITY, |m, d| if d > 0.0 && d < m { d } else { m });
+    // 24 bits, with the rounding of the calibration factor.
+    if !(finest < f64::INFINITY && range < finest * 2f64.powi(25)) {
+        return 0.0;
+    }
+    let whole = changes().filter(|&d| d > 0.0).take(4096).all(|d| {
+        let steps = d / finest;
+        (steps - steps.round()).abs() < 1e-3
+    });
+    if whole { finest } else { 0.0 }
 }
 
 fn extremes(block: &[f64]) -> (f64, f64) {

@@ -37,6 +37,15 @@ fn peek() {
     let plain = Tach::plain(51200.0);
     let cases: Vec<(&str, Tach)> = vec![
         ("plain", plain.clone()),
+        ("round", Tach { round: true, ..plain.clone() }),
+        ("round 8bit", Tach { step: 10.0 / 256.0, round: true, ..plain.clone() }),
+        ("round angle1", Tach { round: true, edge: Length::Degrees(1.0), ..plain.clone() }),
+        ("round angle2", Tach { round: true, edge: Length::Degrees(2.0), ..plain.clone() }),
+        ("round angle4", Tach { round: true, edge: Length::Degrees(4.0), ..plain.clone() }),
+        ("round a4 8bit", Tach { step: 10.0/256.0, round: true, edge: Length::Degrees(4.0), ..plain.clone() }),
+        ("round 40us", Tach { round: true, edge: Length::Seconds(40e-6), ..plain.clone() }),
+        ("round 200us", Tach { round: true, edge: Length::Seconds(200e-6), ..plain.clone() }),
+        ("round 400us", Tach { round: true, edge: Length::Seconds(400e-6), ..plain.clone() }),
         (
             "angle",
             Tach {

@@ -115,7 +115,7 @@ pub(crate) enum Length {
     Degrees(f64),
 }
 
-/// A tach: straight edges, sampled at points. The leading edge's middle stands at whole
+/// A tach sampled at points. The leading edge's middle stands at whole
 /// multiples of 1/`per_rev` revolutions.
 #[derive(Clone)]
 pub(crate) struct Tach {
@@ -129,6 +129,8 @@ pub(crate) struct Tach {
     pub(crate) drift_per_s: f64,
     /// Step of the converter.
     pub(crate) step: f64,
+    /// Edges shaped (1 + sin πx)/2 instead of straight.
+    pub(crate) round: bool,
 }
 
 impl Tach {
@@ -143,6 +145,7 @@ impl Tach {
             noise: 0.0,
             drift_per_s: 0.0,
             step: 0.0,
+            round: false,
         }
     }
 
@@ -162,6 +165,10 @@ impl Tach {
                 Length::Seconds(s) => (time - at) / s,
                 Length::Degrees(d) => (motion.angle(time) - motion.angle(at)) / (d / 360.0),
             };
+            let shape = |x: f64| {
+                let x = x.clamp(-0.5, 0.5);
+                if self.round { 0.5 * (1.0 + (std::f64::consts::PI * x).sin()) } else { 0.5 + x }
+            };
             let end = match self.width {
                 Length::Seconds(s) => t + s,
                 Length::Degrees(d) => motion.time(angle + d / 360.0, t),
@@ -171,8 +178,8 @@ impl Tach {
             let last = (((end + margin) * self.rate) as usize).min(n);
             for i in first..last {
                 let time = i as f64 / self.rate;
-                let up = (0.5 + along(time, t)).clamp(0.0, 1.0);
-                let down = (0.5 - along(time, end)).clamp(0.0, 1.0);
+                let up = shape(along(time, t));
+                let down = shape(-along(time, end));
                 level[i] = level[i].max(up.min(down));
             }
         }
