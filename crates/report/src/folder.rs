@@ -5,7 +5,7 @@ use shaftwise_figures::{RenderOptions, render, render_svg};
 use shaftwise_run::{AnalysisResult, RunResult};
 
 use crate::batch::{Batch, temporary};
-use crate::figure::{Drawing, analysis_figures, speed_figure};
+use crate::figure::{Drawing, Scene, analysis_figures, speed_figure};
 use crate::name::{FileNames, Stems};
 use crate::{Context, Error, command_json, curves, findings, json_text, report_json};
 
@@ -151,7 +151,12 @@ impl Prepared {
         let asked = |o: &shaftwise_run::Outcome| matches!(o.result, AnalysisResult::Speed(_));
         let mut speed_pictures = Vec::new();
         if !result.analyses.iter().any(asked) {
-            let drawing = speed_figure(&result.speed, result, context);
+            let scene = Scene {
+                result,
+                settings: &serde_json::Value::Null,
+                context,
+            };
+            let drawing = speed_figure(&result.speed, scene);
             speed_pictures = self.stage_figures(&mut batch, &mut names, "speed", vec![drawing])?;
             let tables = curves::speed_tables(&result.speed);
             stage_tables(&mut batch, &mut names, "speed", tables)?;

@@ -2,7 +2,7 @@
 //!
 //! A finished run ([`RunResult`](shaftwise_run::RunResult)) becomes
 //!
-//! - words for the terminal: [`summary`], [`report_summary`];
+//! - words for the terminal: [`summary()`], [`report_summary`];
 //! - JSON with fixed names: [`command_json`], laid out by [`json_text`];
 //! - files: [`prepare`] opens the folder before the long work, [`Prepared::write_command`] and
 //!   [`Prepared::write_report`] fill it, [`write_wav`] writes samples.

@@ -1,5 +1,7 @@
 //! Numbers for people: few digits, aligned by their points.
 
+use std::fmt::Display;
+
 /// A value with that many digits that count; what could not be worked out is a hyphen.
 pub(crate) fn significant(value: f64, digits: usize) -> String {
     if !value.is_finite() {
@@ -80,12 +82,10 @@ pub(crate) fn rpm(value: f64) -> String {
 }
 
 /// "1 peak", "2 peaks".
-pub(crate) fn count(number: usize, noun: &str) -> String {
-    if number == 1 {
-        format!("1 {noun}")
-    } else {
-        format!("{number} {noun}s")
-    }
+pub(crate) fn count(number: impl Display, noun: &str) -> String {
+    let number = number.to_string();
+    let plural = if number == "1" { "" } else { "s" };
+    format!("{number} {noun}{plural}")
 }
 
 #[cfg(test)]

@@ -2,15 +2,6 @@
 
 use shaftwise_run::{AnalysisResult, AxisChoice, ChannelFacts, Detector, SpectrumResult};
 
-/// From rms to the level in a detector: 1, √2, 2√2 (of a sinusoid).
-pub(crate) fn factor(detector: Detector) -> f64 {
-    match detector {
-        Detector::Rms => 1.0,
-        Detector::Peak => std::f64::consts::SQRT_2,
-        Detector::PeakToPeak => 2.0 * std::f64::consts::SQRT_2,
-    }
-}
-
 /// The detector's name.
 pub(crate) fn detector_word(detector: Detector) -> &'static str {
     match detector {

@@ -1,23 +1,20 @@
 use shaftwise_figures::{Figure, Inset, Panel, PeakLabel, Role, Series, SeriesStyle};
-use shaftwise_run::{CompareResult, RunResult};
+use shaftwise_run::{CompareResult, detector_factor};
 
 use super::spectrum::{Shades, x_axis, y_axis};
-use super::{Drawing, foot::foot, subtitle};
-use crate::Context;
+use super::{Drawing, Scene, foot::foot, subtitle};
 use crate::number::{count, fixed, place, significant};
-use crate::shown::{clean, factor, level_unit, quantity};
+use crate::shown::{clean, level_unit, quantity};
 use crate::words::{lost, order_spacing, showcase};
 
 /// Smeared over tracked on one amplitude axis, both magnified where smearing cost most.
-pub(super) fn figure(
-    compare: &CompareResult,
-    channel: usize,
-    result: &RunResult,
-    context: &Context,
-) -> Drawing {
+pub(super) fn figure(compare: &CompareResult, channel: usize, scene: Scene<'_>) -> Drawing {
+    let Scene {
+        result, context, ..
+    } = scene;
     let channel = &compare.channels[channel];
     let blocks = &compare.blocks;
-    let detector = factor(channel.detector);
+    let detector = detector_factor(channel.detector);
     let unit = level_unit(&channel.channel, channel.detector);
     let shown = |values: &[f64]| -> Vec<f64> { values.iter().map(|v| v * detector).collect() };
     let both: Vec<f64> = channel
@@ -28,23 +25,23 @@ pub(super) fn figure(
         .collect();
     let trusted = result.speed.highest_trusted_order;
     let magnified = showcase(channel, trusted);
-    let shades = Shades::of(blocks, &channel.orders, trusted);
+    let highest = scene.highest_order(&channel.orders);
+    let shades = Shades::of(blocks, highest, trusted);
     let inset = magnified.map(|peak| {
         let spread = compare.speed_spread * peak.order;
         let reach = [peak.smeared_width_orders, peak.tracked_width_orders, spread]
             .into_iter()
             .filter(|w| w.is_finite())
             .fold(8.0 * blocks.order_step, f64::max);
-        let highest = channel.orders.last().copied().unwrap_or(reach);
-        let from = (peak.order - reach).max(0.0);
+        let to = (peak.order + reach).min(highest.max(peak.order));
         Inset {
             share: (0.3, 0.66),
-            ..Inset::new(from, (from + 2.0 * reach).min(highest.max(from + reach)))
+            ..Inset::new((to - 2.0 * reach).max(0.0), to)
         }
     });
     let panel = |heading: &str, role, y: Vec<f64>| {
         let mut panel = Panel::new(
-            x_axis(true, &channel.orders),
+            x_axis(true, highest),
             y_axis(&format!("{}, {unit}", quantity(&channel.channel)), &both),
         );
         panel.x.label = "order (multiples of mean shaft speed)".to_owned();

@@ -7,6 +7,7 @@ mod spectrum;
 mod speed;
 mod synchronous;
 
+use serde_json::Value;
 use shaftwise_figures::Figure;
 use shaftwise_run::{AnalysisResult, ChannelFacts, RunResult};
 
@@ -21,6 +22,24 @@ pub(crate) struct Drawing {
     pub(crate) figure: Figure,
 }
 
+/// What stands around an analysis.
+#[derive(Clone, Copy)]
+pub(crate) struct Scene<'r> {
+    pub(crate) result: &'r RunResult,
+    /// Settings of the analysis; null where there is none.
+    pub(crate) settings: &'r Value,
+    pub(crate) context: &'r Context,
+}
+
+impl Scene<'_> {
+    /// The highest order asked for or, if that is higher, drawn.
+    fn highest_order(&self, orders: &[f64]) -> f64 {
+        let asked = self.settings.get("max_order").and_then(Value::as_f64);
+        let drawn = orders.last().copied().unwrap_or(0.0);
+        asked.unwrap_or(drawn).max(drawn)
+    }
+}
+
 /// The figures of one channel of an analysis (`speed`: channel 0).
 pub(crate) fn analysis_figures(
     result: &RunResult,
@@ -28,11 +47,17 @@ pub(crate) fn analysis_figures(
     channel: usize,
     context: &Context,
 ) -> Vec<Drawing> {
-    match &result.analyses[index].result {
-        AnalysisResult::Speed(speed) => vec![speed_figure(speed, result, context)],
-        AnalysisResult::Spectrum(r) => vec![spectrum::figure(r, channel, result, context)],
-        AnalysisResult::Synchronous(r) => synchronous::figures(r, channel, result, context),
-        AnalysisResult::Compare(r) => vec![compare::figure(r, channel, result, context)],
+    let outcome = &result.analyses[index];
+    let scene = Scene {
+        result,
+        settings: &outcome.settings,
+        context,
+    };
+    match &outcome.result {
+        AnalysisResult::Speed(speed) => vec![speed_figure(speed, scene)],
+        AnalysisResult::Spectrum(r) => vec![spectrum::figure(r, channel, scene)],
+        AnalysisResult::Synchronous(r) => synchronous::figures(r, channel, scene),
+        AnalysisResult::Compare(r) => vec![compare::figure(r, channel, scene)],
     }
 }
 

@@ -1,24 +1,21 @@
 use shaftwise_figures::{
     Axis, Band, BandShade, Figure, LegendPlace, Panel, PeakLabel, Role, Series, Span, SpanKind,
 };
-use shaftwise_run::{AxisChoice, BlockFacts, RunResult, SpectrumResult};
+use shaftwise_run::{AxisChoice, BlockFacts, SpectrumResult, detector_factor};
 
-use super::{Drawing, foot::foot, subtitle};
-use crate::Context;
+use super::{Drawing, Scene, foot::foot, subtitle};
 use crate::number::{short, significant};
-use crate::shown::{clean, factor, line_unit, quantity};
+use crate::shown::{clean, line_unit, quantity};
 use crate::words::{line_spacing, peak_named, peak_place};
 
 /// A spectrum with its bounds shaded and its peaks labelled, and once more with decades for its
 /// floor.
-pub(super) fn figure(
-    spectrum: &SpectrumResult,
-    channel: usize,
-    result: &RunResult,
-    context: &Context,
-) -> Drawing {
+pub(super) fn figure(spectrum: &SpectrumResult, channel: usize, scene: Scene<'_>) -> Drawing {
+    let Scene {
+        result, context, ..
+    } = scene;
     let channel = &spectrum.channels[channel];
-    let detector = factor(channel.detector);
+    let detector = detector_factor(channel.detector);
     let shown = |values: &[f64]| -> Vec<f64> { values.iter().map(|v| v * detector).collect() };
     let unit = line_unit(spectrum, &channel.channel, channel.detector);
     let by_order = spectrum.axis == AxisChoice::Orders;
@@ -26,15 +23,24 @@ pub(super) fn figure(
         (Some(x), _) | (None, Some(x)) => x.clone(),
         (None, None) => Vec::new(),
     };
+    let highest = if by_order {
+        scene.highest_order(&x)
+    } else {
+        x.last().copied().unwrap_or(0.0)
+    };
     let shades = if by_order {
-        Shades::of(&spectrum.blocks, &x, result.speed.highest_trusted_order)
+        Shades::of(
+            &spectrum.blocks,
+            highest,
+            result.speed.highest_trusted_order,
+        )
     } else {
         Shades::default()
     };
     let what = if spectrum.density { " density" } else { "" };
     let label = format!("{}{what}, {unit}", quantity(&channel.channel));
     let panel = |y: Axis| {
-        let mut panel = Panel::new(x_axis(by_order, &x), y);
+        let mut panel = Panel::new(x_axis(by_order, highest), y);
         panel.bands.push(Band {
             name: "90 % bounds".to_owned(),
             x: x.clone(),
@@ -115,15 +121,16 @@ fn unnamed(span: Span) -> Span {
     }
 }
 
-pub(super) fn x_axis(by_order: bool, x: &[f64]) -> Axis {
+pub(super) fn x_axis(by_order: bool, highest: f64) -> Axis {
     let axis = Axis::linear(if by_order {
         "order (multiples of shaft speed)"
     } else {
         "frequency, Hz"
     });
-    match (x.first(), x.last()) {
-        (Some(&first), Some(&last)) if last > first => axis.over(first, last),
-        _ => axis,
+    if highest > 0.0 {
+        axis.over(0.0, highest)
+    } else {
+        axis
     }
 }
 
@@ -167,11 +174,8 @@ pub(super) struct Shades {
 }
 
 impl Shades {
-    pub(super) fn of(blocks: &BlockFacts, orders: &[f64], trusted: f64) -> Self {
+    pub(super) fn of(blocks: &BlockFacts, highest: f64, trusted: f64) -> Self {
         let mut shades = Self::default();
-        let Some(&highest) = orders.last() else {
-            return shades;
-        };
         let mut add = |from: f64, to: f64, kind, text: &str, meaning: String| {
             if from < to {
                 shades.spans.push(Span {

@@ -1,15 +1,17 @@
 use shaftwise_figures::{
     Axis, Band, BandShade, Figure, MarkHeight, Marks, Panel, Role, Series, Span, SpanKind, Symbol,
 };
-use shaftwise_run::{RunResult, SpeedResult};
+use shaftwise_run::SpeedResult;
 
-use super::{Drawing, foot, subtitle};
-use crate::Context;
+use super::{Drawing, Scene, foot, subtitle};
 use crate::number::{short, significant};
 use crate::words::{ledger_count, speed_range};
 
 /// Speed against time with its 1-sigma band, the ledger's marks, breaks and what was left out.
-pub(crate) fn speed_figure(speed: &SpeedResult, result: &RunResult, context: &Context) -> Drawing {
+pub(crate) fn speed_figure(speed: &SpeedResult, scene: Scene<'_>) -> Drawing {
+    let Scene {
+        result, context, ..
+    } = scene;
     let curve = joined(speed);
     let mut panel = Panel::new(Axis::linear("time, s"), Axis::linear("shaft speed, rpm"));
     let edge = |sign: f64| {

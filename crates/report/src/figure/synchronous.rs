@@ -3,10 +3,9 @@ use std::f64::consts::PI;
 use shaftwise_figures::{
     Axis, Band, BandShade, Figure, Panel, PeakLabel, Role, Rule, RuleWay, Series, SeriesStyle,
 };
-use shaftwise_run::{RunResult, SynchronousChannel, SynchronousResult};
+use shaftwise_run::{SynchronousChannel, SynchronousResult};
 
-use super::{Drawing, foot::foot, subtitle};
-use crate::Context;
+use super::{Drawing, Scene, foot::foot, subtitle};
 use crate::number::{fixed, place, significant};
 use crate::shown::{clean, quantity};
 use crate::words::{amplitude_sigma, convergence_verdict, strongest_orders};
@@ -15,9 +14,11 @@ use crate::words::{amplitude_sigma, convergence_verdict, strongest_orders};
 pub(super) fn figures(
     average: &SynchronousResult,
     channel: usize,
-    result: &RunResult,
-    context: &Context,
+    scene: Scene<'_>,
 ) -> Vec<Drawing> {
+    let Scene {
+        result, context, ..
+    } = scene;
     let channel = &average.channels[channel];
     let unit = clean(&channel.channel.unit);
     let resolution = format!(
