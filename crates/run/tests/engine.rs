@@ -1,87 +1,14 @@
 //! The engine against recordings with planted content.
 #![allow(clippy::unwrap_used, missing_docs)]
 
-use shaftwise_recording::{FloatWidth, WavConfig, WavWriter};
+mod planted;
+
+use planted::{comparison, db, job, run, sensor, spectrum, synchronous, write};
 use shaftwise_run::{
-    Analysis, AnalysisResult, AxisChoice, CompareResult, CompareSettings, Control, Job, RecordingSettings, RunResult,
-    Selection, ShownAs, SpectrumResult, SpectrumSettings, SpeedSettings, SynchronousResult, SynchronousSettings,
-    TachSettings, WindowChoice, execute,
+    Analysis, AxisChoice, ChannelPick, ChannelSettings, CompareSettings, Exclusion, Job, ShownAs, SpectrumSettings,
+    SpeedSettings, SynchronousSettings, WindowChoice,
 };
-use shaftwise_synth::{Channel, Noise, Order, PulseTrain, Recipe, Speed, Synth, Tone};
-use std::path::Path;
-use std::sync::atomic::AtomicBool;
-
-/// Writes the recipe's channels as a 64-bit float WAV and its true pulse times beside it.
-fn write(dir: &Path, recipe: &Recipe) {
-    let rendered = Synth::render(recipe).unwrap();
-    let file = std::fs::File::create(dir.join("r.wav")).unwrap();
-    let config = WavConfig {
-        channels: rendered.channels.len(),
-        sample_rate_hz: recipe.sample_rate_hz,
-        frames: rendered.channels[0].len() as u64,
-        width: FloatWidth::F64,
-    };
-    let mut writer = WavWriter::new(std::io::BufWriter::new(file), &config).unwrap();
-    writer.write_planar(&rendered.channels).unwrap();
-    writer.finish().unwrap();
-    let mut times = String::new();
-    for time in rendered.truth.tachs.first().map(|t| t.times_s()).unwrap_or_default() {
-        times.push_str(&format!("{time:.17}\n"));
-    }
-    std::fs::write(dir.join("times.txt"), times).unwrap();
-}
-
-fn job(dir: &Path, analyses: Vec<Analysis>) -> Job {
-    Job {
-        recording: RecordingSettings { file: "r.wav".to_owned(), ..Default::default() },
-        tach: TachSettings { times: Some("times.txt".to_owned()), ..Default::default() },
-        select: Selection::default(),
-        analyses,
-        base: dir.to_owned(),
-        threads: 2,
-    }
-}
-
-fn run(job: &Job) -> RunResult {
-    execute(job, &Control { progress: &|_| {}, cancel: &AtomicBool::new(false) }).unwrap()
-}
-
-fn spectrum(result: &RunResult) -> &SpectrumResult {
-    result
-        .analyses
-        .iter()
-        .find_map(|o| if let AnalysisResult::Spectrum(s) = &o.result { Some(s) } else { None })
-        .unwrap()
-}
-
-fn synchronous(result: &RunResult) -> &SynchronousResult {
-    result
-        .analyses
-        .iter()
-        .find_map(|o| if let AnalysisResult::Synchronous(s) = &o.result { Some(s) } else { None })
-        .unwrap()
-}
-
-fn comparison(result: &RunResult) -> &CompareResult {
-    result
-        .analyses
-        .iter()
-        .find_map(|o| if let AnalysisResult::Compare(s) = &o.result { Some(s) } else { None })
-        .unwrap()
-}
-
-fn sensor(name: &str, orders: &[(f64, f64, f64)], tones: &[(f64, f64)], noise: f64) -> Channel {
-    Channel {
-        orders: orders.iter().map(|(k, a, p)| Order::new(*k, *a, *p)).collect(),
-        tones: tones.iter().map(|(f, a)| Tone::new(*f, *a, 10.0)).collect(),
-        noise: if noise > 0.0 { vec![Noise::White { rms: noise }] } else { Vec::new() },
-        ..Channel::new(name, "acceleration", "m/s²")
-    }
-}
-
-fn db(ratio: f64) -> f64 {
-    20.0 * ratio.log10()
-}
+use shaftwise_synth::{Channel, PulseTrain, Recipe, Speed};
 
 #[test]
 fn orders_keep_level_and_phase_while_the_speed_drifts() {
@@ -93,7 +20,7 @@ fn orders_keep_level_and_phase_while_the_speed_drifts() {
         Channel::tach(PulseTrain::once_per_rev()),
     ];
     write(dir.path(), &recipe);
-    let settings = SynchronousSettings { channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]), ..Default::default() };
+    let settings = SynchronousSettings { channel: Some(vec![ChannelPick::Number(1)]), ..Default::default() };
     let window = SpectrumSettings {
         channel: settings.channel.clone(),
         window: WindowChoice::Kaiser,
@@ -134,7 +61,7 @@ fn the_cut_off_follows_the_speed() {
         write(dir.path(), &recipe);
         let settings = SpectrumSettings {
             window: WindowChoice::Kaiser,
-            channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]),
+            channel: Some(vec![ChannelPick::Number(1)]),
             ..Default::default()
         };
         let result = run(&job(dir.path(), vec![Analysis::Spectrum(settings)]));
@@ -156,14 +83,14 @@ fn any_number_of_threads_gives_the_same_bits() {
         Analysis::Speed(SpeedSettings::default()),
         Analysis::Spectrum(SpectrumSettings::default()),
         Analysis::Spectrum(SpectrumSettings { axis: AxisChoice::Hz, ..Default::default() }),
-        Analysis::Spectrum(SpectrumSettings { shown_as: Some(ShownAs::Velocity), channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]), ..Default::default() }),
+        Analysis::Spectrum(SpectrumSettings { shown_as: Some(ShownAs::Velocity), channel: Some(vec![ChannelPick::Number(1)]), ..Default::default() }),
         Analysis::Synchronous(SynchronousSettings::default()),
         Analysis::Compare(CompareSettings::default()),
     ];
     let mut job = job(dir.path(), analyses);
     job.recording.channels =
-        vec![shaftwise_run::ChannelSettings { unit: Some("m/s2".to_owned()), ..Default::default() }];
-    job.select.exclude = vec![shaftwise_run::Exclusion { from_s: 17.0, to_s: 18.2, reason: None }];
+        vec![ChannelSettings { unit: Some("m/s2".to_owned()), ..Default::default() }];
+    job.select.exclude = vec![Exclusion { from_s: 17.0, to_s: 18.2, reason: None }];
     let text = |threads: usize| {
         let result = run(&Job { threads, ..job.clone() });
         serde_json::to_string(&result.analyses.iter().map(|o| &o.result).collect::<Vec<_>>()).unwrap()
@@ -184,7 +111,7 @@ fn comparison_shows_what_smearing_spread() {
     ];
     write(dir.path(), &recipe);
     let settings =
-        CompareSettings { channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]), ..Default::default() };
+        CompareSettings { channel: Some(vec![ChannelPick::Number(1)]), ..Default::default() };
     let result = run(&job(dir.path(), vec![Analysis::Compare(settings)]));
     let compared = comparison(&result);
     assert!(!compared.plain_is_good_enough);
@@ -210,14 +137,14 @@ fn velocity_comes_from_acceleration_above_twice_the_corner() {
     ];
     write(dir.path(), &recipe);
     let settings = SpectrumSettings {
-        channel: Some(vec![shaftwise_run::ChannelPick::Number(1)]),
+        channel: Some(vec![ChannelPick::Number(1)]),
         axis: AxisChoice::Hz,
         shown_as: Some(ShownAs::Velocity),
         ..Default::default()
     };
     let mut job = job(dir.path(), vec![Analysis::Spectrum(settings)]);
     job.recording.channels =
-        vec![shaftwise_run::ChannelSettings { unit: Some("m/s2".to_owned()), ..Default::default() }];
+        vec![ChannelSettings { unit: Some("m/s2".to_owned()), ..Default::default() }];
     let result = run(&job);
     let channel = &spectrum(&result).channels[0];
     assert_eq!(channel.channel.unit, "mm/s");
