@@ -4,6 +4,7 @@ use shaftwise_run::{AnalysisResult, RunResult};
 
 use crate::Context;
 use crate::context::stated;
+use crate::name::Stems;
 use crate::next::same_input;
 use crate::number::{count, fixed};
 use crate::shown::{channels, clean};
@@ -18,7 +19,7 @@ const WIDTH: usize = 100;
 /// Characters of the word that opens a block, with the blanks behind it.
 const OPENING: usize = 9;
 /// The same where the names of commands open blocks.
-const WIDE_OPENING: usize = 12;
+const WIDE_OPENING: usize = 14;
 /// Rows of all tables together that keep a summary at about twenty lines.
 const ROWS: usize = 9;
 /// Channels spoken of one by one.
@@ -111,15 +112,17 @@ pub fn report_summary(result: &RunResult, written: &[PathBuf], context: &Context
     let mut out = opening(result, context, WIDE_OPENING);
     out.speed(result);
     for (index, outcome) in result.analyses.iter().enumerate() {
+        // As in the names of its files, so that two of one command are told apart.
+        let word = Stems::new(result, index).command;
         for part in parts(result, index, Some(0)) {
             if part.title != SHAFT {
                 let said = format!("{}: {}", part.title, part.short);
-                out.block(outcome.command, &[said]);
+                out.block(&word, &[said]);
             }
         }
         let common = in_common(&outcome.result);
         if !common.is_empty() {
-            out.block(outcome.command, &[common]);
+            out.block(&word, &[common]);
         }
     }
     let mut limits = vec![crate::words::NO_LIMIT.to_owned(), SCATTER_ONLY.to_owned()];

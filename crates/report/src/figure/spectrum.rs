@@ -1,7 +1,7 @@
 use shaftwise_figures::{
     Axis, Band, BandShade, Figure, LegendPlace, Panel, PeakLabel, Role, Series, Span, SpanKind,
 };
-use shaftwise_run::{AxisChoice, BlockFacts, SpectrumResult, detector_factor};
+use shaftwise_run::{AxisChoice, BlockFacts, PeakResult, SpectrumResult, detector_factor};
 
 use super::{Drawing, Scene, foot::foot, subtitle};
 use crate::number::{short, significant};
@@ -64,25 +64,35 @@ pub(super) fn figure(spectrum: &SpectrumResult, channel: usize, scene: Scene<'_>
     let mut even = panel(y_axis(&label, &upper));
     even.spans.clone_from(&shades.spans);
     let unit_alone = clean(&channel.channel.unit);
-    even.labels = channel
-        .peaks
-        .iter()
-        .filter_map(|peak| {
+    let highest_peak = channel.peaks.iter().map(|p| p.rms).fold(0.0, f64::max);
+    let labels = |shown: &dyn Fn(&PeakResult) -> bool, with_level: bool| -> Vec<PeakLabel> {
+        let mut peaks: Vec<&PeakResult> = channel.peaks.iter().filter(|p| shown(p)).collect();
+        if !with_level {
+            // Where decades are shown, what stands out most is seen first.
+            peaks.sort_by(|a, b| b.over_noise_db.total_cmp(&a.over_noise_db));
+        }
+        let label = |peak: &PeakResult| {
+            let at = peak_place(peak, spectrum);
+            let level = significant(detector * peak.rms, 3);
             Some(PeakLabel {
                 x: peak.order.or(peak.frequency_hz)?,
                 y: detector * peak.rms,
-                text: format!(
-                    "{} · {} {unit_alone}",
-                    peak_place(peak, spectrum),
-                    significant(detector * peak.rms, 3)
-                ),
+                text: if with_level {
+                    format!("{at} · {level} {unit_alone}")
+                } else {
+                    at
+                },
                 role: Role::Primary,
             })
-        })
-        .collect();
+        };
+        peaks.into_iter().filter_map(label).collect()
+    };
+    even.labels = labels(&|p| p.rms >= SEEN * highest_peak, true);
     let mut decades = panel(decades(&label, &upper));
     decades.legend = LegendPlace::Hidden;
     decades.height_share = 0.55;
+    decades.labels = labels(&|p| p.rms < SEEN * highest_peak, false);
+    decades.labels.truncate(MOST_SMALL);
     decades.spans = shades.spans.iter().cloned().map(unnamed).collect();
     let title = match channel.peaks.first() {
         Some(peak) => {
@@ -113,6 +123,12 @@ pub(super) fn figure(spectrum: &SpectrumResult, channel: usize, scene: Scene<'_>
         },
     }
 }
+
+/// Peaks lower than this share of the highest lie on the axis where it is even; they are named
+/// where it has decades.
+const SEEN: f64 = 0.02;
+/// Most names of small peaks.
+const MOST_SMALL: usize = 16;
 
 fn unnamed(span: Span) -> Span {
     Span {
@@ -156,11 +172,11 @@ pub(super) fn y_axis(label: &str, upper: &[f64]) -> Axis {
     }
 }
 
-/// Decades over all lines, at most five below the highest.
+/// Decades over all lines, at most seven below the highest.
 fn decades(label: &str, upper: &[f64]) -> Axis {
     let axis = Axis::log(label);
     match extremes(upper) {
-        Some((lowest, highest)) => axis.over((0.5 * lowest).max(1e-5 * highest), 2.0 * highest),
+        Some((lowest, highest)) => axis.over((0.5 * lowest).max(1e-7 * highest), 4.0 * highest),
         None => axis,
     }
 }

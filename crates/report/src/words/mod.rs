@@ -118,7 +118,7 @@ pub(crate) fn limits(result: &RunResult, index: usize) -> Vec<String> {
     let speed = &result.speed;
     let trusted = match speed.highest_trusted_order {
         order if order.is_finite() => format!(
-            "highest trusted order {} (angle scatters by 10° there, common practice)",
+            "highest trusted order {} (10° of scatter there, common practice)",
             significant(order, 3)
         ),
         order if order > 0.0 => "the angle sets no highest trusted order".to_owned(),
@@ -127,7 +127,7 @@ pub(crate) fn limits(result: &RunResult, index: usize) -> Vec<String> {
     let mut limits = Vec::new();
     let mut blocks_say = |blocks: &BlockFacts, spacing: &str| {
         limits.push(format!(
-            "{trusted}; rate reaches {}",
+            "{trusted}; rate reaches order {}",
             significant(blocks.reachable_order, 3)
         ));
         limits.push(format!(
