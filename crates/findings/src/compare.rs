@@ -69,13 +69,19 @@ fn interpolate(power: &[f64], line: usize, lobe: &WindowLobe) -> (f64, f64) {
     let (before, here, after) = (power[line - 1], power[line], power[line + 1]);
     let offset = lobe.offset(before, after);
     let response = lobe.power(offset);
-    if before + after <= 1.3 * here / response * (lobe.power(1.0 - offset) + lobe.power(1.0 + offset)) {
+    if before + after
+        <= 1.3 * here / response * (lobe.power(1.0 - offset) + lobe.power(1.0 + offset))
+    {
         return (here / response, line as f64 + offset);
     }
     // A broad top: the vertex of a parabola through the three levels in dB, if they bend down.
     let (a, b, c) = (before.max(1e-300).ln(), here.ln(), after.max(1e-300).ln());
     let bend = a - 2.0 * b + c;
-    let shift = if bend < 0.0 { (0.5 * (a - c) / bend).clamp(-0.5, 0.5) } else { 0.0 };
+    let shift = if bend < 0.0 {
+        (0.5 * (a - c) / bend).clamp(-0.5, 0.5)
+    } else {
+        0.0
+    };
     (here, line as f64 + shift)
 }
 
@@ -85,7 +91,10 @@ fn interpolate(power: &[f64], line: usize, lobe: &WindowLobe) -> (f64, f64) {
 fn width(power: &[f64], top: usize, from: usize, to: usize) -> f64 {
     let half = 0.5 * power[top];
     let first = (from..=top).find(|k| power[*k] >= half).unwrap_or(top);
-    let last = (top..to.max(top + 1)).rev().find(|k| power[*k] >= half).unwrap_or(top);
+    let last = (top..to.max(top + 1))
+        .rev()
+        .find(|k| power[*k] >= half)
+        .unwrap_or(top);
     let crossing = |start: usize, step: isize| -> f64 {
         let mut inside = start;
         loop {
@@ -167,7 +176,11 @@ impl SmearModel {
         }
         while high - low > 0.01 * high {
             let middle = 0.5 * (low + high);
-            if self.loss_db(middle) < 1.0 { low = middle } else { high = middle }
+            if self.loss_db(middle) < 1.0 {
+                low = middle
+            } else {
+                high = middle
+            }
         }
         Some(0.5 * (low + high))
     }
@@ -183,8 +196,9 @@ mod tests {
         // Closed form Σ w e^{j2πk·½·5t²}, recomputed with numpy for a tone a quarter of a line off the
         // grid: order k at 5 rev/s² in a block of 0.5 s sweeps 5k/4 lines; Hann leaves this of its peak.
         let points = 400;
-        let window: Vec<f64> =
-            (0..points).map(|n| 0.5 - 0.5 * (2.0 * PI * f64::from(n) / f64::from(points)).cos()).collect();
+        let window: Vec<f64> = (0..points)
+            .map(|n| 0.5 - 0.5 * (2.0 * PI * f64::from(n) / f64::from(points)).cos())
+            .collect();
         let lead = |offset_lines: f64, order: f64| -> Vec<f64> {
             (0..points)
                 .map(|n| {
@@ -195,18 +209,30 @@ mod tests {
                 .collect()
         };
         for (order, expected) in [(2.0, 0.921_315), (10.0, 0.558_470), (40.0, 0.282_624)] {
-            let model = SmearModel { window: window.clone(), lead_rev: vec![lead(0.25, order)] };
+            let model = SmearModel {
+                window: window.clone(),
+                lead_rev: vec![lead(0.25, order)],
+            };
             let peak = 10f64.powf(-model.loss_db(order) / 20.0);
             assert!((peak - expected).abs() < 1e-5, "{order}: {peak}");
         }
-        let model = SmearModel { window, lead_rev: vec![lead(0.0, 1.0)] };
+        let model = SmearModel {
+            window,
+            lead_rev: vec![lead(0.0, 1.0)],
+        };
         let onset = model.onset(50.0);
-        assert!(onset.is_some_and(|o| (model.loss_db(o) - 1.0).abs() < 0.05), "{onset:?}");
+        assert!(
+            onset.is_some_and(|o| (model.loss_db(o) - 1.0).abs() < 0.05),
+            "{onset:?}"
+        );
     }
 
     #[test]
     fn steady_turning_never_smears() {
-        let model = SmearModel { window: vec![1.0; 64], lead_rev: vec![vec![0.0; 64]; 5] };
+        let model = SmearModel {
+            window: vec![1.0; 64],
+            lead_rev: vec![vec![0.0; 64]; 5],
+        };
         assert_eq!(model.onset(1e4), None);
     }
 

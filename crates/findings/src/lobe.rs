@@ -25,7 +25,9 @@ impl WindowLobe {
     #[must_use]
     pub fn new(window: &WindowPlan) -> Self {
         let at = |offset: f64| power_response(window.samples(), offset);
-        let power: Vec<f64> = (0..=FINE * FINE_LINES + 2).map(|i| at(i as f64 / FINE as f64)).collect();
+        let power: Vec<f64> = (0..=FINE * FINE_LINES + 2)
+            .map(|i| at(i as f64 / FINE as f64))
+            .collect();
         let lines = (window.samples().len() / 2).min(256);
         let mut skirt: Vec<f64> = (0..=lines)
             .map(|line| {
@@ -45,7 +47,11 @@ impl WindowLobe {
             .find(|&i| power[i + 1] > power[i] || power[i] < 1e-18)
             .unwrap_or(power.len() - 1)
             .div_ceil(FINE);
-        Self { power, skirt, half_width }
+        Self {
+            power,
+            skirt,
+            half_width,
+        }
     }
 
     /// Power response `offset` lines from the tone, 0…7 lines; cubic between table values.
@@ -66,7 +72,11 @@ impl WindowLobe {
     /// Largest power response at `lines` lines or further from the line nearest a tone.
     #[must_use]
     pub fn skirt(&self, lines: usize) -> f64 {
-        self.skirt.get(lines).or(self.skirt.last()).copied().unwrap_or(0.0)
+        self.skirt
+            .get(lines)
+            .or(self.skirt.last())
+            .copied()
+            .unwrap_or(0.0)
     }
 
     /// Lines from a tone to the end of its main lobe.
@@ -79,7 +89,11 @@ impl WindowLobe {
     #[must_use]
     pub fn offset(&self, before: f64, after: f64) -> f64 {
         let sign = if after >= before { 1.0 } else { -1.0 };
-        let (near, far) = if after >= before { (after, before) } else { (before, after) };
+        let (near, far) = if after >= before {
+            (after, before)
+        } else {
+            (before, after)
+        };
         // Grows from 1 at offset 0: compare products, far may be 0.
         let beyond = |d: f64| near * self.power(1.0 + d) > far * self.power(1.0 - d);
         if beyond(0.5) {
@@ -88,7 +102,11 @@ impl WindowLobe {
         let (mut low, mut high) = (0.0, 0.5);
         for _ in 0..40 {
             let middle = 0.5 * (low + high);
-            if beyond(middle) { low = middle } else { high = middle }
+            if beyond(middle) {
+                low = middle
+            } else {
+                high = middle
+            }
         }
         sign * 0.5 * (low + high)
     }
@@ -126,10 +144,16 @@ mod tests {
             assert_eq!(lobe.half_width(), width, "{window:?}");
             for i in 0..60 {
                 let offset = f64::from(i) * 0.0413;
-                assert!((lobe.power(offset) - plan.response(offset).powi(2)).abs() < 2e-7, "{offset}");
+                assert!(
+                    (lobe.power(offset) - plan.response(offset).powi(2)).abs() < 2e-7,
+                    "{offset}"
+                );
             }
             for offset in [-0.5, -0.31, 0.0, 0.07, 0.49] {
-                let found = lobe.offset(plan.response(1.0 + offset).powi(2), plan.response(1.0 - offset).powi(2));
+                let found = lobe.offset(
+                    plan.response(1.0 + offset).powi(2),
+                    plan.response(1.0 - offset).powi(2),
+                );
                 assert!((found - offset).abs() < 1e-4, "{window:?} {offset} {found}");
             }
         }

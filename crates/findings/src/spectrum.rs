@@ -3,7 +3,8 @@
 use crate::WindowLobe;
 use shaftwise_orders::{AveragedSpectrum, SpectrumPlan};
 use shaftwise_signal::{
-    LineScatter, chi_square_quantile, equivalent_averages, level_bounds, median_in_place, tone_equivalent_averages,
+    LineScatter, chi_square_quantile, equivalent_averages, level_bounds, median_in_place,
+    tone_equivalent_averages,
 };
 
 /// What to ask of a spectrum.
@@ -21,6 +22,10 @@ pub struct SpectrumReading {
     pub line_order: f64,
     /// Lines from here on hold nothing to be trusted.
     pub usable_lines: usize,
+    /// No peak is listed below this line: there a high-pass stands. 1 without one.
+    pub first_line: usize,
+    /// Power of the line number that a conversion in time puts on the noise: 2p for (j2πf)^p.
+    pub floor_exponent: f64,
 }
 
 /// What can be said of a peak.
@@ -82,8 +87,7 @@ pub struct SpectrumFindings {
 
 /// Reads an averaged spectrum.
 ///
-/// The noise of a line is the median of the lines around it, peaks left out, over the median of
-/// its χ² law. A peak is a local maximum above what noise alone reaches with the chance asked for in
+/// The noise of a line is the median of the quiet lines beside it over the median of its χ² law. A peak is a local maximum above what noise alone reaches with the chance asked for in
 /// the whole spectrum, and above the skirts of stronger peaks.
 #[must_use]
 pub fn read_spectrum(
@@ -95,7 +99,8 @@ pub fn read_spectrum(
     let power = &spectrum.mean;
     let usable = reading.usable_lines.min(power.len());
     let noise_averages = equivalent_averages(spectrum.blocks, |m| plan.correlation(m)).max(1.0);
-    let tone_averages = tone_equivalent_averages(spectrum.blocks, |m| plan.correlation(m)).clamp(0.5, noise_averages);
+    let tone_averages = tone_equivalent_averages(spectrum.blocks, |m| plan.correlation(m))
+        .clamp(0.5, noise_averages);
     let freedom = 2.0 * noise_averages;
     // Neighbouring lines share noise: Σ of squared correlations over lines is N Σw⁴/(Σw²)².
     let w = plan.window().samples();
@@ -103,14 +108,14 @@ pub fn read_spectrum(
     let fourth: f64 = w.iter().map(|w| w.powi(4)).sum();
     let shared = w.len() as f64 * fourth / (square * square);
     let chance = reading.false_alarm / usable.max(1) as f64;
-    // The noise level is itself a median of 2·36 lines (π/2 times the variance of a mean), of which
-    // every `shared` count as one: its scatter adds to that of the line looked at.
-    let rarer = freedom / (1.0 + 0.5 * std::f64::consts::PI * shared / 72.0);
+    // The noise level is itself a median (π/2 times the variance of a mean) of lines of which every
+    // `shared` count as one: its scatter adds to that of the line looked at.
+    let rarer = freedom / (1.0 + 0.5 * std::f64::consts::PI * shared / (2 * SIDE) as f64);
     let stand_out = chi_square_quantile(1.0 - chance, rarer) / rarer;
 
     // Noise first with everything in, then without what stood out.
     let mut busy = vec![false; usable];
-    let mut noise = floor(power, &busy, lobe, freedom);
+    let mut noise = floor(power, &busy, lobe, freedom, reading);
     let mut found = Vec::new();
     for _ in 0..3 {
         found = candidates(power, &noise, stand_out, lobe, reading, usable);
@@ -124,7 +129,7 @@ pub fn read_spectrum(
             break;
         }
         busy = next;
-        noise = floor(power, &busy, lobe, freedom);
+        noise = floor(power, &busy, lobe, freedom, reading);
     }
 
     let scatter = |line: usize, noise_power: f64| LineScatter {
@@ -146,14 +151,25 @@ pub fn read_spectrum(
 
     let mut peaks: Vec<Peak> = found
         .iter()
-        .map(|&line| read_peak(line, spectrum, &noise, lobe, &scatter(line, noise[line]), reading))
+        .map(|&line| {
+            read_peak(
+                line,
+                spectrum,
+                &noise,
+                lobe,
+                &scatter(line, noise[line]),
+                reading,
+            )
+        })
         .collect();
     peaks.sort_by(|a, b| b.power.total_cmp(&a.power).then(a.line.cmp(&b.line)));
 
     let bandwidth = plan.window().noise_bandwidth_lines();
     let total = power[1.min(usable)..usable].iter().sum::<f64>() / bandwidth;
     let by_noise = total_variance * shared / (bandwidth * bandwidth);
-    let seen = seen_variance(spectrum, |epoch| epoch[1.min(usable)..usable].iter().sum::<f64>() / bandwidth);
+    let seen = seen_variance(spectrum, |epoch| {
+        epoch[1.min(usable)..usable].iter().sum::<f64>() / bandwidth
+    });
     let variance = by_noise.max(seen.unwrap_or(0.0));
     let (total_lower, total_upper) = chi_square_band(total, variance, reading.confidence);
 
@@ -186,55 +202,88 @@ fn chi_square_band(value: f64, variance: f64, confidence: f64) -> (f64, f64) {
 /// An angle that scatters by σ takes 1 − e^{−(kσ)²} off the power of order k; the loss is not
 /// corrected, so it counts as what may be missing.
 fn systematic_variance(line: usize, reading: &SpectrumReading) -> f64 {
-    let angle = 2.0 * std::f64::consts::PI * line as f64 * reading.line_order * reading.angle_sigma_rev;
+    let angle =
+        2.0 * std::f64::consts::PI * line as f64 * reading.line_order * reading.angle_sigma_rev;
     let loss = -(-angle * angle).exp_m1();
     loss * loss
 }
 
-/// Noise beside each line: median of the lines around it, `busy` ones left out.
-fn floor(power: &[f64], busy: &[bool], lobe: &WindowLobe, freedom: f64) -> Vec<f64> {
+/// Lines asked on either side of a line for its noise: the median of both keeps 1.25/√48 of one
+/// line's scatter, and a floor that bends within so few lines is rare.
+const SIDE: usize = 24;
+
+/// Noise beside each line: the median of the nearest quiet lines on either side, after the slope
+/// between the two sides (a straight line in log power) was taken off.
+fn floor(
+    power: &[f64],
+    busy: &[bool],
+    lobe: &WindowLobe,
+    freedom: f64,
+    reading: &SpectrumReading,
+) -> Vec<f64> {
     let usable = busy.len();
-    // Beyond the main lobe of a peak on the line itself, then wide enough for a steady median:
-    // 72 lines leave it 1.25/√72 of one line's scatter.
-    let near = lobe.half_width() + 3;
-    let far = near + 35;
+    let near = lobe.half_width() + 2;
     let to_mean = freedom / chi_square_quantile(0.5, freedom);
     let top = chi_square_quantile(0.995, freedom) / freedom;
-    let mut pool: Vec<f64> = Vec::with_capacity(2 * (far - near + 1));
+    // Integration tilts the floor in a way that is known: look at it as it was recorded.
+    let tilt = |line: usize| (line.max(1) as f64).powf(reading.floor_exponent);
+    let recorded: Vec<f64> = power
+        .iter()
+        .enumerate()
+        .map(|(line, p)| p / tilt(line))
+        .collect();
+    let quiet = |line: &usize| !busy[*line];
+    let (mut left, mut right) = (Vec::with_capacity(SIDE), Vec::with_capacity(SIDE));
+    let mut pool = Vec::with_capacity(2 * SIDE);
+    let mut median = |lines: &[usize]| {
+        pool.clear();
+        pool.extend(lines.iter().map(|l| recorded[*l]));
+        median_in_place(&mut pool)
+    };
+    let centre = |lines: &[usize]| lines.iter().sum::<usize>() as f64 / lines.len() as f64;
+    let mut level_pool = Vec::with_capacity(2 * SIDE);
     let mut noise = vec![0.0; power.len()];
     for line in 0..usable {
-        pool.clear();
-        // At the ends the window of lines slides inward; where peaks crowd, it widens.
-        let mut reach = far;
-        loop {
-            pool.clear();
-            for distance in near..=reach {
-                for other in [line.checked_sub(distance), Some(line + distance)].into_iter().flatten() {
-                    if (1..usable).contains(&other) && !busy[other] {
-                        pool.push(power[other]);
-                    }
-                }
+        left.clear();
+        left.extend(
+            (1..line.saturating_sub(near - 1))
+                .rev()
+                .filter(quiet)
+                .take(SIDE),
+        );
+        right.clear();
+        right.extend((line + near..usable).filter(quiet).take(SIDE));
+        // Six lines are the fewest whose median says anything.
+        let slope = if left.len() >= 6 && right.len() >= 6 {
+            let (a, b) = (median(&left), median(&right));
+            if a > 0.0 && b > 0.0 {
+                (b / a).ln() / (centre(&right) - centre(&left))
+            } else {
+                0.0
             }
-            if pool.len() >= 36 || reach > usable {
-                break;
-            }
-            reach *= 2;
-        }
-        if pool.is_empty() {
-            noise[line] = 0.0;
+        } else {
+            0.0
+        };
+        level_pool.clear();
+        level_pool.extend(
+            left.iter()
+                .chain(&right)
+                .map(|&l| recorded[l] * (slope * (line as f64 - l as f64)).exp()),
+        );
+        if level_pool.is_empty() {
             continue;
         }
-        let mut level = median_in_place(&mut pool) * to_mean;
+        let mut level = median_in_place(&mut level_pool) * to_mean;
         // What still towers over the noise is no noise.
         for _ in 0..4 {
-            let before = pool.len();
-            pool.retain(|p| *p <= level * top);
-            if pool.len() == before || pool.len() < 8 {
+            let before = level_pool.len();
+            level_pool.retain(|p| *p <= level * top);
+            if level_pool.len() == before || level_pool.len() < 6 {
                 break;
             }
-            level = median_in_place(&mut pool) * to_mean;
+            level = median_in_place(&mut level_pool) * to_mean;
         }
-        noise[line] = level;
+        noise[line] = level * tilt(line);
     }
     noise
 }
@@ -252,9 +301,12 @@ fn candidates(
     reading: &SpectrumReading,
     usable: usize,
 ) -> Vec<usize> {
-    let mut tops: Vec<usize> = (1..usable.saturating_sub(1))
+    let mut tops: Vec<usize> = (reading.first_line.max(1)..usable.saturating_sub(1))
         .filter(|&k| {
-            power[k] > power[k - 1] && power[k] >= power[k + 1] && power[k] > noise[k] * stand_out && power[k] > 0.0
+            power[k] > power[k - 1]
+                && power[k] >= power[k + 1]
+                && power[k] > noise[k] * stand_out
+                && power[k] > 0.0
         })
         .collect();
     tops.sort_by(|a, b| power[*b].total_cmp(&power[*a]).then(a.cmp(b)));
@@ -270,7 +322,11 @@ fn candidates(
         if !hidden {
             kept.push(top);
             // An angle off by σ turns order k by 2πkσ: that share of it may stand elsewhere.
-            let turn = 2.0 * std::f64::consts::PI * top as f64 * reading.line_order * reading.angle_sigma_rev;
+            let turn = 2.0
+                * std::f64::consts::PI
+                * top as f64
+                * reading.line_order
+                * reading.angle_sigma_rev;
             left_over = left_over.max(power[top] * (turn * turn).max(OWN_ACCURACY));
         }
     }
@@ -293,7 +349,8 @@ fn read_peak(
     let response = lobe.power(offset);
     // A pure tone has a main lobe of the window's own width; a wider peak is no tone between
     // lines, and nothing is added to it.
-    let narrow = before + after <= 1.3 * here / response * (lobe.power(1.0 - offset) + lobe.power(1.0 + offset));
+    let narrow = before + after
+        <= 1.3 * here / response * (lobe.power(1.0 - offset) + lobe.power(1.0 + offset));
     let gain = if narrow { 1.0 / response } else { 1.0 };
     let bounds = level_bounds(power[line], scatter, reading.confidence);
 
@@ -301,13 +358,16 @@ fn read_peak(
     let seen = seen_variance(spectrum, |epoch| epoch[line]);
     let by_noise = 2.0 * power[line] * power[line] / bounds.freedom;
     let mean = power[line];
-    let seen_scatter_db = seen.map_or(f64::NAN, |v| 10.0 / std::f64::consts::LN_10 * v.sqrt() / mean);
+    let seen_scatter_db = seen.map_or(f64::NAN, |v| {
+        10.0 / std::f64::consts::LN_10 * v.sqrt() / mean
+    });
     let epochs = spectrum.epoch_means.len() as f64;
     // One in a thousand peaks of a steady machine may be called wandering, and then only if it
     // also spoils the repeatability.
     let wanders = seen.is_some_and(|v| {
         let ratio = v / by_noise * (epochs - 1.0);
-        ratio > chi_square_quantile(0.999, epochs - 1.0) && 1.645 * seen_scatter_db > reading.repeatability_db
+        ratio > chi_square_quantile(0.999, epochs - 1.0)
+            && 1.645 * seen_scatter_db > reading.repeatability_db
     });
     let verdict = if wanders {
         Verdict::Wanders
@@ -319,9 +379,10 @@ fn read_peak(
     let averages_needed = match verdict {
         Verdict::Wanders => None,
         Verdict::Repeatable => Some(spectrum.blocks),
-        Verdict::MoreAverages => {
-            Some((spectrum.blocks as f64 * (half_width_db / reading.repeatability_db).powi(2)).ceil() as u64)
-        }
+        Verdict::MoreAverages => Some(
+            (spectrum.blocks as f64 * (half_width_db / reading.repeatability_db).powi(2)).ceil()
+                as u64,
+        ),
     };
     Peak {
         line,
@@ -329,7 +390,11 @@ fn read_peak(
         power: mean * gain,
         lower: bounds.lower * gain,
         upper: bounds.upper * gain,
-        over_noise: if noise[line] > 0.0 { mean / noise[line] } else { f64::INFINITY },
+        over_noise: if noise[line] > 0.0 {
+            mean / noise[line]
+        } else {
+            f64::INFINITY
+        },
         verdict,
         averages_needed,
         seen_scatter_db,
@@ -343,7 +408,14 @@ fn seen_variance(spectrum: &AveragedSpectrum, value: impl Fn(&[f64]) -> f64) -> 
         return None;
     }
     let total: u64 = epochs.iter().map(|(n, _)| n).sum();
-    let mean = epochs.iter().map(|(n, e)| *n as f64 * value(e)).sum::<f64>() / total as f64;
-    let between: f64 = epochs.iter().map(|(n, e)| *n as f64 * (value(e) - mean).powi(2)).sum();
+    let mean = epochs
+        .iter()
+        .map(|(n, e)| *n as f64 * value(e))
+        .sum::<f64>()
+        / total as f64;
+    let between: f64 = epochs
+        .iter()
+        .map(|(n, e)| *n as f64 * (value(e) - mean).powi(2))
+        .sum();
     Some(between / (epochs.len() as f64 - 1.0) / total as f64)
 }

@@ -20,11 +20,18 @@ const READING: SpectrumReading = SpectrumReading {
     angle_sigma_rev: 0.0,
     line_order: 0.0,
     usable_lines: 513,
+    first_line: 1,
+    floor_exponent: 0.0,
 };
 
 fn plan() -> Arc<SpectrumPlan> {
-    let config =
-        SpectrumConfig { window: Window::Hann, block: BLOCK, hop: HOP, lines: 513, average: Average::Power };
+    let config = SpectrumConfig {
+        window: Window::Hann,
+        block: BLOCK,
+        hop: HOP,
+        lines: 513,
+        average: Average::Power,
+    };
     Arc::new(SpectrumPlan::new(config).unwrap())
 }
 
@@ -61,11 +68,20 @@ impl Count {
 
 /// Coverage of noise lines and of tones at the given levels over their noise, and the widest
 /// bounds of a tone in dB.
-fn coverage(averages: usize, levels_db: &[f64], machines: u64, seed: u64) -> (Count, Vec<Count>, f64) {
+fn coverage(
+    averages: usize,
+    levels_db: &[f64],
+    machines: u64,
+    seed: u64,
+) -> (Count, Vec<Count>, f64) {
     let plan = plan();
     let lobe = WindowLobe::new(plan.window());
     let mut scratch = plan.scratch();
-    let (mut noise_lines, mut tones, mut widest) = (Count::default(), vec![Count::default(); levels_db.len()], 0.0f64);
+    let (mut noise_lines, mut tones, mut widest) = (
+        Count::default(),
+        vec![Count::default(); levels_db.len()],
+        0.0f64,
+    );
     for machine in 0..machines {
         let random = Generator::new(seed + machine * 1000 + averages as u64);
         let choice = random.fork(1);
@@ -78,7 +94,12 @@ fn coverage(averages: usize, levels_db: &[f64], machines: u64, seed: u64) -> (Co
             if i % 2 == 0 {
                 let class = (choice.uniform_at(1000 + i as u64) * levels_db.len() as f64) as usize;
                 let power = line_noise * 10f64.powf(levels_db[class] / 10.0);
-                components.push((*place, class, (2.0 * power).sqrt(), choice.uniform_at(2000 + i as u64)));
+                components.push((
+                    *place,
+                    class,
+                    (2.0 * power).sqrt(),
+                    choice.uniform_at(2000 + i as u64),
+                ));
             }
         }
         let length = BLOCK + (averages - 1) * HOP;
@@ -92,7 +113,11 @@ fn coverage(averages: usize, levels_db: &[f64], machines: u64, seed: u64) -> (Co
         }
         let mut sums = SpectrumAccumulator::new(plan.clone(), 1);
         for block in 0..averages {
-            sums.push(block * 12 / averages, [&x[block * HOP..block * HOP + BLOCK]], &mut scratch);
+            sums.push(
+                block * 12 / averages,
+                [&x[block * HOP..block * HOP + BLOCK]],
+                &mut scratch,
+            );
         }
         let spectrum = sums.finish().remove(0);
         let found = read_spectrum(&spectrum, &plan, &lobe, &READING);
@@ -133,7 +158,11 @@ fn bounds_hold_the_expected_level_nine_times_in_ten() {
             "{averages} | {:.1} % of {} | {} | {:.1} % of {}",
             noise.per_cent(),
             noise.drawn,
-            tones.iter().map(|t| format!("{:.1} % of {}", t.per_cent(), t.drawn)).collect::<Vec<_>>().join(" | "),
+            tones
+                .iter()
+                .map(|t| format!("{:.1} % of {}", t.per_cent(), t.drawn))
+                .collect::<Vec<_>>()
+                .join(" | "),
             together.per_cent(),
             together.drawn
         );
@@ -148,10 +177,60 @@ fn bounds_hold_the_expected_level_nine_times_in_ten() {
 fn strong_tones_have_narrow_bounds_that_hold() {
     for averages in [16, 32, 64] {
         let (_, tones, widest) = coverage(averages, &[60.0], 60, 77);
-        println!("{averages} averages, 60 dB: {:.1} % of {}, at most {widest:.4} dB wide", tones[0].per_cent(), tones[0].drawn);
+        println!(
+            "{averages} averages, 60 dB: {:.1} % of {}, at most {widest:.4} dB wide",
+            tones[0].per_cent(),
+            tones[0].drawn
+        );
         assert!(tones[0].per_cent() >= 88.0);
         assert!(widest <= 0.05);
     }
+}
+
+#[test]
+fn a_tilted_floor_is_no_peak() {
+    // White noise, integrated twice: the floor falls by 12 dB an octave in amplitude.
+    let plan = plan();
+    let lobe = WindowLobe::new(plan.window());
+    let mut peaks = 0;
+    for machine in 0..100u64 {
+        let mut x = vec![0.0; BLOCK + 31 * HOP];
+        Generator::new(500 + machine).fill_gaussian(0, &mut x);
+        let mut scratch = plan.scratch();
+        let mut sums = SpectrumAccumulator::new(plan.clone(), 1);
+        for block in 0..32 {
+            sums.push(
+                block * 12 / 32,
+                [&x[block * HOP..block * HOP + BLOCK]],
+                &mut scratch,
+            );
+        }
+        let mut spectrum = sums.finish().remove(0);
+        let tilt = |line: usize| (line.max(1) as f64).powi(-4);
+        for (line, power) in spectrum.mean.iter_mut().enumerate() {
+            *power *= tilt(line);
+        }
+        for (_, epoch) in &mut spectrum.epoch_means {
+            epoch
+                .iter_mut()
+                .enumerate()
+                .for_each(|(line, power)| *power *= tilt(line));
+        }
+        let known = SpectrumReading {
+            floor_exponent: -4.0,
+            ..READING
+        };
+        peaks += read_spectrum(&spectrum, &plan, &lobe, &known).peaks.len();
+        // Where nobody says so, the sides tell it, but for the first lines.
+        let told = SpectrumReading {
+            first_line: 40,
+            ..READING
+        };
+        peaks += read_spectrum(&spectrum, &plan, &lobe, &told).peaks.len();
+    }
+    println!("tilted floors: {peaks} peaks in 200 spectra");
+    // 5 % of spectra, binomial scatter of 3 %, and the noise level's own.
+    assert!(peaks <= 20, "{peaks}");
 }
 
 #[test]
@@ -165,13 +244,20 @@ fn noise_alone_gives_a_peak_in_one_spectrum_of_twenty() {
         Generator::new(9000 + machine).fill_gaussian(0, &mut x);
         let mut sums = SpectrumAccumulator::new(plan.clone(), 1);
         for block in 0..32 {
-            sums.push(block * 12 / 32, [&x[block * HOP..block * HOP + BLOCK]], &mut scratch);
+            sums.push(
+                block * 12 / 32,
+                [&x[block * HOP..block * HOP + BLOCK]],
+                &mut scratch,
+            );
         }
         let found = read_spectrum(&sums.finish()[0], &plan, &lobe, &READING);
         with_peak += u32::from(!found.peaks.is_empty());
     }
     let share = f64::from(with_peak) / spectra as f64;
-    println!("noise alone: a peak in {:.1} % of {spectra} spectra", 100.0 * share);
+    println!(
+        "noise alone: a peak in {:.1} % of {spectra} spectra",
+        100.0 * share
+    );
     // Binomial: 5 % of 600 scatters by 0.9 %; four of that, and the noise level is itself an estimate.
     assert!(share < 0.09, "{share}");
 }

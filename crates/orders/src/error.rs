@@ -5,7 +5,9 @@
 #[non_exhaustive]
 pub enum Error {
     /// Block, hop and lines do not fit each other.
-    #[error("a block of {block} samples with a hop of {hop} and {lines} lines, expected 2 samples or more, a hop of 1 or more, 1 to block/2 + 1 lines")]
+    #[error(
+        "a block of {block} samples with a hop of {hop} and {lines} lines, expected 2 samples or more, a hop of 1 or more, 1 to block/2 + 1 lines"
+    )]
     Block {
         /// Samples in a block.
         block: usize,

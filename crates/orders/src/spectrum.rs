@@ -55,7 +55,9 @@ pub struct SpectrumPlan {
 
 impl std::fmt::Debug for SpectrumPlan {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        f.debug_struct("SpectrumPlan").field("config", &self.config).finish_non_exhaustive()
+        f.debug_struct("SpectrumPlan")
+            .field("config", &self.config)
+            .finish_non_exhaustive()
     }
 }
 
@@ -76,12 +78,21 @@ impl SpectrumPlan {
     pub fn new(config: SpectrumConfig) -> Result<Self, Error> {
         let most = config.block / 2 + 1;
         if config.block < 2 || config.hop == 0 || config.lines == 0 || config.lines > most {
-            return Err(Error::Block { block: config.block, hop: config.hop, lines: config.lines });
+            return Err(Error::Block {
+                block: config.block,
+                hop: config.hop,
+                lines: config.lines,
+            });
         }
         let window = WindowPlan::new(config.window, config.block)?;
         let window_sum = window.samples().iter().sum();
         let fft = RealFftPlanner::new().plan_fft_forward(config.block);
-        Ok(Self { config, window, window_sum, fft })
+        Ok(Self {
+            config,
+            window,
+            window_sum,
+            fft,
+        })
     }
 
     /// The settings.
@@ -135,7 +146,9 @@ impl SpectrumPlan {
     /// Correlation of the noise of blocks `blocks_apart` hops apart.
     #[must_use]
     pub fn correlation(&self, blocks_apart: u64) -> f64 {
-        let shift = usize::try_from(blocks_apart).unwrap_or(usize::MAX).saturating_mul(self.config.hop);
+        let shift = usize::try_from(blocks_apart)
+            .unwrap_or(usize::MAX)
+            .saturating_mul(self.config.hop);
         self.window.overlap_correlation(shift)
     }
 }
@@ -170,8 +183,17 @@ impl SpectrumAccumulator {
     #[must_use]
     pub fn new(plan: Arc<SpectrumPlan>, channels: usize) -> Self {
         let lines = plan.config.lines;
-        let other = if plan.config.average == Average::Power { 0 } else { lines };
-        let sums = Sums { power: Epochs::default(), square: vec![0.0; lines], other: vec![0.0; other], first: Vec::new() };
+        let other = if plan.config.average == Average::Power {
+            0
+        } else {
+            lines
+        };
+        let sums = Sums {
+            power: Epochs::default(),
+            square: vec![0.0; lines],
+            other: vec![0.0; other],
+            first: Vec::new(),
+        };
         Self {
             channels: vec![sums; channels],
             blocks: 0,
@@ -264,7 +286,12 @@ impl SpectrumAccumulator {
         self.channels
             .into_iter()
             .map(|sums| {
-                let mean: Vec<f64> = sums.power.total(self.plan.config.lines).iter().map(|p| p / count).collect();
+                let mean: Vec<f64> = sums
+                    .power
+                    .total(self.plan.config.lines)
+                    .iter()
+                    .map(|p| p / count)
+                    .collect();
                 let variance = sums
                     .square
                     .iter()
@@ -274,9 +301,12 @@ impl SpectrumAccumulator {
                 let shown = match self.plan.config.average {
                     Average::Power => mean.clone(),
                     Average::Amplitude => sums.other.iter().map(|a| (a / count).powi(2)).collect(),
-                    Average::Exponential { .. } => {
-                        sums.other.iter().zip(&sums.first).map(|(v, first)| v + self.decay * first).collect()
-                    }
+                    Average::Exponential { .. } => sums
+                        .other
+                        .iter()
+                        .zip(&sums.first)
+                        .map(|(v, first)| v + self.decay * first)
+                        .collect(),
                     Average::PeakHold => sums.other,
                 };
                 AveragedSpectrum {
@@ -315,13 +345,21 @@ mod tests {
     use std::f64::consts::PI;
 
     fn plan(average: Average) -> Arc<SpectrumPlan> {
-        let config = SpectrumConfig { window: Window::Hann, block: 64, hop: 32, lines: 33, average };
+        let config = SpectrumConfig {
+            window: Window::Hann,
+            block: 64,
+            hop: 32,
+            lines: 33,
+            average,
+        };
         Arc::new(SpectrumPlan::new(config).unwrap())
     }
 
     fn block(seed: usize) -> Vec<f64> {
         // A Weyl sequence: spread evenly, no two blocks alike.
-        (0..64).map(|n| ((n + 64 * seed) as f64 * 0.618_033_988_749_895).fract() - 0.5).collect()
+        (0..64)
+            .map(|n| ((n + 64 * seed) as f64 * 0.618_033_988_749_895).fract() - 0.5)
+            .collect()
     }
 
     fn fold(average: Average, cuts: &[usize]) -> AveragedSpectrum {
@@ -343,7 +381,9 @@ mod tests {
     #[test]
     fn a_sinusoid_on_a_line_has_its_mean_square_under_a_large_bias() {
         let plan = plan(Average::Power);
-        let x: Vec<f64> = (0..64).map(|n| 1e4 + 3.0 * (2.0 * PI * 9.0 * n as f64 / 64.0 + 0.3).cos()).collect();
+        let x: Vec<f64> = (0..64)
+            .map(|n| 1e4 + 3.0 * (2.0 * PI * 9.0 * n as f64 / 64.0 + 0.3).cos())
+            .collect();
         let mut power = vec![0.0; 33];
         plan.power(&x, &mut plan.scratch(), &mut power);
         assert_relative_eq!(power[9], 4.5, max_relative = 1e-9);
@@ -355,9 +395,12 @@ mod tests {
 
     #[test]
     fn chunks_fold_to_what_one_run_gives() {
-        for average in
-            [Average::Power, Average::Amplitude, Average::PeakHold, Average::Exponential { alpha: 0.125 }]
-        {
+        for average in [
+            Average::Power,
+            Average::Amplitude,
+            Average::PeakHold,
+            Average::Exponential { alpha: 0.125 },
+        ] {
             let whole = fold(average, &[24]);
             let parts = fold(average, &[0, 5, 6, 17, 24]);
             assert_eq!(whole.blocks, parts.blocks);
@@ -383,17 +426,31 @@ mod tests {
             plan.power(&block(i), &mut scratch, &mut power);
             expected = Some(match expected {
                 None => power,
-                Some(y) => y.iter().zip(&power).map(|(y, p)| (1.0 - alpha) * y + alpha * p).collect(),
+                Some(y) => y
+                    .iter()
+                    .zip(&power)
+                    .map(|(y, p)| (1.0 - alpha) * y + alpha * p)
+                    .collect(),
             });
         }
-        for (a, b) in fold(Average::Exponential { alpha }, &[3, 24]).shown.iter().zip(&expected.unwrap()) {
+        for (a, b) in fold(Average::Exponential { alpha }, &[3, 24])
+            .shown
+            .iter()
+            .zip(&expected.unwrap())
+        {
             assert_abs_diff_eq!(a, b, epsilon = 1e-16);
         }
     }
 
     #[test]
     fn impossible_blocks_are_refused() {
-        let base = SpectrumConfig { window: Window::Hann, block: 64, hop: 32, lines: 33, average: Average::Power };
+        let base = SpectrumConfig {
+            window: Window::Hann,
+            block: 64,
+            hop: 32,
+            lines: 33,
+            average: Average::Power,
+        };
         for wrong in [
             SpectrumConfig { block: 1, ..base },
             SpectrumConfig { hop: 0, ..base },

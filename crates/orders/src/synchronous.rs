@@ -42,7 +42,11 @@ impl Cascade {
                 return;
             };
             let scale = 1.0 / (1u64 << level) as f64;
-            let square: f64 = earlier.iter().zip(&sum).map(|(a, b)| ((a - b) * scale).powi(2)).sum();
+            let square: f64 = earlier
+                .iter()
+                .zip(&sum)
+                .map(|(a, b)| ((a - b) * scale).powi(2))
+                .sum();
             here.variance_sum += 0.5 * square / sum.len() as f64;
             here.pairs += 1;
             for (s, e) in sum.iter_mut().zip(&earlier) {
@@ -100,7 +104,11 @@ impl SynchronousAccumulator {
         // in the sums.
         let grouped = self.revolutions < 1 << self.chunk_level;
         for (sums, revolution) in self.channels.iter_mut().zip(revolutions) {
-            assert_eq!(revolution.len(), self.samples_per_rev, "samples in a revolution");
+            assert_eq!(
+                revolution.len(),
+                self.samples_per_rev,
+                "samples in a revolution"
+            );
             sums.by_epoch.add(epoch, revolution);
             for (s, x) in sums.square.iter_mut().zip(revolution) {
                 *s += x * x;
@@ -138,7 +146,11 @@ impl SynchronousAccumulator {
             }
         }
         self.revolutions += later.revolutions;
-        for (s, n) in self.epoch_revolutions.iter_mut().zip(later.epoch_revolutions) {
+        for (s, n) in self
+            .epoch_revolutions
+            .iter_mut()
+            .zip(later.epoch_revolutions)
+        {
             *s += n;
         }
     }
@@ -157,7 +169,12 @@ impl SynchronousAccumulator {
         self.channels
             .into_iter()
             .map(|sums| {
-                let mean: Vec<f64> = sums.by_epoch.total(length).iter().map(|s| s / count).collect();
+                let mean: Vec<f64> = sums
+                    .by_epoch
+                    .total(length)
+                    .iter()
+                    .map(|s| s / count)
+                    .collect();
                 // Σx² − N·mean² loses digits under a bias; the loss is (bias/noise)² eps, harmless to 1e6.
                 let sd: Vec<f64> = sums
                     .square
@@ -174,12 +191,17 @@ impl SynchronousAccumulator {
                 let between: f64 = epochs
                     .iter()
                     .map(|(n, epoch)| {
-                        let square: f64 = epoch.iter().zip(&mean).map(|(e, m)| (e - m).powi(2)).sum();
+                        let square: f64 =
+                            epoch.iter().zip(&mean).map(|(e, m)| (e - m).powi(2)).sum();
                         *n as f64 * square / length as f64
                     })
                     .sum::<f64>()
                     / (epochs.len() as f64 - 1.0);
-                let single = sums.cascade.levels.first().map_or(f64::NAN, |l| l.variance_sum / l.pairs as f64);
+                let single = sums
+                    .cascade
+                    .levels
+                    .first()
+                    .map_or(f64::NAN, |l| l.variance_sum / l.pairs as f64);
                 let convergence = sums
                     .cascade
                     .levels
@@ -249,7 +271,8 @@ pub fn revolution_orders(mean: &[f64], highest: u32) -> Vec<OrderComponent> {
     let fft = RealFftPlanner::<f64>::new().plan_fft_forward(length);
     let mut time = mean.to_vec();
     let mut lines = fft.make_output_vec();
-    fft.process(&mut time, &mut lines).expect("vectors made by the plan");
+    fft.process(&mut time, &mut lines)
+        .expect("vectors made by the plan");
     lines
         .iter()
         .take(highest as usize + 1)
@@ -286,9 +309,14 @@ mod tests {
         let mut sums = SynchronousAccumulator::new(m, 2, 16);
         for r in 0..revolutions {
             let part = |shift: f64| -> Vec<f64> {
-                (0..m).map(|i| (2.0 * PI * (order * (r as f64 + i as f64 / m as f64) + shift)).cos()).collect()
+                (0..m)
+                    .map(|i| (2.0 * PI * (order * (r as f64 + i as f64 / m as f64) + shift)).cos())
+                    .collect()
             };
-            sums.push((r * 12 / revolutions) as usize, [part(0.0).as_slice(), part(0.25).as_slice()]);
+            sums.push(
+                (r * 12 / revolutions) as usize,
+                [part(0.0).as_slice(), part(0.25).as_slice()],
+            );
         }
         // Two channels a quarter turn apart: their squares add to the envelope at every angle.
         let averages = sums.finish();
@@ -319,7 +347,9 @@ mod tests {
         let mut noise = || {
             let mut sum = -6.0;
             for _ in 0..12 {
-                state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+                state = state
+                    .wrapping_mul(6_364_136_223_846_793_005)
+                    .wrapping_add(1_442_695_040_888_963_407);
                 sum += (state >> 11) as f64 / (1u64 << 53) as f64;
             }
             sum
@@ -328,7 +358,9 @@ mod tests {
         for chunk in 0..n / 64 {
             let mut part = SynchronousAccumulator::new(m, 1, 64);
             for r in 0..64 {
-                let x: Vec<f64> = (0..m).map(|i| (2.0 * PI * i as f64 / m as f64).cos() + noise()).collect();
+                let x: Vec<f64> = (0..m)
+                    .map(|i| (2.0 * PI * i as f64 / m as f64).cos() + noise())
+                    .collect();
                 part.push(((chunk * 64 + r) * 12 / n) as usize, [x.as_slice()]);
             }
             total.merge(part);
@@ -344,10 +376,17 @@ mod tests {
             // Pairs: 512 / 2^k of 128 angles; four standard deviations.
             let pairs = 512.0 / *revolutions as f64;
             let tolerance = 4.0 * 4.343 * (2.0 / (128.0 * pairs)).sqrt() + 0.1;
-            assert!((seen - law).abs() < tolerance, "{revolutions}: {seen} against {law}");
+            assert!(
+                (seen - law).abs() < tolerance,
+                "{revolutions}: {seen} against {law}"
+            );
         }
         let orders = revolution_orders(&average.mean, 5);
-        assert_abs_diff_eq!(orders[1].amplitude, 1.0, epsilon = 5.0 * order_amplitude_noise(&average));
+        assert_abs_diff_eq!(
+            orders[1].amplitude,
+            1.0,
+            epsilon = 5.0 * order_amplitude_noise(&average)
+        );
     }
 
     #[test]
@@ -359,7 +398,9 @@ mod tests {
         let mut sums = SynchronousAccumulator::new(m, 1, 64);
         for r in 0..n {
             let shift = shaftwise_signal::normal_quantile((r as f64 + 0.5) / n as f64) * PI / 180.0;
-            let x: Vec<f64> = (0..m).map(|i| (40.0 * (2.0 * PI * i as f64 / m as f64 + shift)).cos()).collect();
+            let x: Vec<f64> = (0..m)
+                .map(|i| (40.0 * (2.0 * PI * i as f64 / m as f64 + shift)).cos())
+                .collect();
             sums.push((r * 12 / n) as usize, [x.as_slice()]);
         }
         let orders = revolution_orders(&sums.finish()[0].mean, 50);
@@ -368,13 +409,19 @@ mod tests {
 
     #[test]
     fn components_keep_amplitude_and_lead() {
-        let x: Vec<f64> =
-            (0..90).map(|i| -2.0 + 3.0 * (2.0 * PI * (7.0 * f64::from(i) / 90.0 + 0.2)).cos()).collect();
+        let x: Vec<f64> = (0..90)
+            .map(|i| -2.0 + 3.0 * (2.0 * PI * (7.0 * f64::from(i) / 90.0 + 0.2)).cos())
+            .collect();
         let orders = revolution_orders(&x, 45);
         assert_abs_diff_eq!(orders[0].amplitude, 2.0, epsilon = 1e-14);
         assert_abs_diff_eq!(orders[7].amplitude, 3.0, epsilon = 1e-14);
         assert_abs_diff_eq!(orders[7].phase, 0.2, epsilon = 1e-14);
-        assert!(orders.iter().filter(|o| o.order != 0 && o.order != 7).all(|o| o.amplitude < 1e-14));
+        assert!(
+            orders
+                .iter()
+                .filter(|o| o.order != 0 && o.order != 7)
+                .all(|o| o.amplitude < 1e-14)
+        );
         assert!(revolution_orders(&[], 3).is_empty());
     }
 }

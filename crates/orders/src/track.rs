@@ -57,8 +57,16 @@ impl Track {
     /// If one of them is 0.
     #[must_use]
     pub fn new(rotation: Arc<Rotation>, turns: u64, per: u64, samples_per_rev: u32) -> Self {
-        assert!(turns > 0 && per > 0 && samples_per_rev > 0, "a grid of {samples_per_rev} samples at {turns}/{per}");
-        Self { rotation, turns: i128::from(turns), per: i128::from(per), samples_per_rev }
+        assert!(
+            turns > 0 && per > 0 && samples_per_rev > 0,
+            "a grid of {samples_per_rev} samples at {turns}/{per}"
+        );
+        Self {
+            rotation,
+            turns: i128::from(turns),
+            per: i128::from(per),
+            samples_per_rev,
+        }
     }
 
     /// The rotation.
@@ -104,13 +112,22 @@ impl Track {
     }
 
     fn evaluate(&self, piece: &Piece, rev: i64, fraction: f64) -> Instant {
-        let u = ((rev - piece.first_rev) as f64 + (fraction - piece.first_fraction)) / piece.width_rev;
+        let u =
+            ((rev - piece.first_rev) as f64 + (fraction - piece.first_fraction)) / piece.width_rev;
         let c = &piece.coefficients;
         let offset = c.iter().rev().fold(0.0, |sum, c| sum * u + c);
-        let slope = (1..c.len()).rev().fold(0.0, |sum, k| sum * u + k as f64 * c[k]) / piece.width_rev;
+        let slope = (1..c.len())
+            .rev()
+            .fold(0.0, |sum, k| sum * u + k as f64 * c[k])
+            / piece.width_rev;
         let position = SamplePosition::new(piece.origin, offset);
-        let per_grid_sample = self.per as f64 / (self.turns as f64 * f64::from(self.samples_per_rev));
-        Instant { index: position.index, fraction: position.fraction, step: slope * per_grid_sample }
+        let per_grid_sample =
+            self.per as f64 / (self.turns as f64 * f64::from(self.samples_per_rev));
+        Instant {
+            index: position.index,
+            fraction: position.fraction,
+            step: slope * per_grid_sample,
+        }
     }
 
     /// Appends the instants of `count` grid samples of a section from `first` on.
@@ -140,7 +157,9 @@ impl Track {
     pub fn reach(step: f64, levels: u32, filter_reach: u64) -> u64 {
         let scale = f64::from(2u32).powi(levels as i32);
         // Two more on each side: positions and the first sample of a level are rounded to its grid.
-        ((InterpolationPlan::reach(step / scale) + 2) as u64) * (1u64 << levels) + PyramidPlan::reach(levels) + filter_reach
+        ((InterpolationPlan::reach(step / scale) + 2) as u64) * (1u64 << levels)
+            + PyramidPlan::reach(levels)
+            + filter_reach
     }
 
     /// The part of a section between `from` and `to` that has all its neighbours in the recording,
@@ -171,7 +190,11 @@ impl Track {
         let mut last = (self.grid_place(rev, fraction) + slack).floor() as i64;
         let fits = |index: i64| {
             let instant = self.instant(number, index);
-            let reach = Self::reach(instant.step, PyramidPlan::levels(instant.step), limits.filter_reach);
+            let reach = Self::reach(
+                instant.step,
+                PyramidPlan::levels(instant.step),
+                limits.filter_reach,
+            );
             instant.index >= reach && instant.index + reach + 2 <= limits.total_samples
         };
         while first < last && !fits(first) {
@@ -180,7 +203,11 @@ impl Track {
         while last > first && !fits(last) {
             last -= per_rev;
         }
-        (last > first).then_some(Stretch { section: number, first, count: last - first + 1 })
+        (last > first).then_some(Stretch {
+            section: number,
+            first,
+            count: last - first + 1,
+        })
     }
 }
 
@@ -219,7 +246,14 @@ mod tests {
     #[test]
     fn samples_per_revolution_follow_the_256_rule() {
         // Common practice: usable lines = N/2.56, so order 100 needs 256 samples a revolution.
-        for (order, samples) in [(100.0, 256), (50.0, 128), (400.0, 1024), (10.0, 30), (0.5, 2), (51.0, 144)] {
+        for (order, samples) in [
+            (100.0, 256),
+            (50.0, 128),
+            (400.0, 1024),
+            (10.0, 30),
+            (0.5, 2),
+            (51.0, 144),
+        ] {
             assert_eq!(samples_per_rev(order), samples, "order {order}");
         }
     }

@@ -13,18 +13,30 @@ use std::sync::Arc;
 fn worst_error(hours: f64, order: f64) -> f64 {
     let rate = 51_200.0;
     let start_s = 3600.0 * hours;
-    let mut recipe = Recipe::new(rate, start_s + 20.0, Speed::constant(80.0).with_wobble(1.0, 0.1, 0.0));
+    let mut recipe = Recipe::new(
+        rate,
+        start_s + 20.0,
+        Speed::constant(80.0).with_wobble(1.0, 0.1, 0.0),
+    );
     recipe.channels = vec![Channel {
         orders: vec![Order::new(order, 1.0, 0.0)],
         ..Channel::new("A", "acceleration", "m/s²")
     }];
     let mut synth = Synth::new(&recipe).unwrap();
     let motion = synth.motion().clone();
-    let first_rev = motion.angle(shaftwise_synth::Exact::from(start_s)).value().ceil();
-    let times: Vec<_> =
-        (0..400).map(|n| motion.time_at(shaftwise_synth::Exact::from(first_rev + f64::from(n)))).collect();
+    let first_rev = motion
+        .angle(shaftwise_synth::Exact::from(start_s))
+        .value()
+        .ceil();
+    let times: Vec<_> = (0..400)
+        .map(|n| motion.time_at(shaftwise_synth::Exact::from(first_rev + f64::from(n))))
+        .collect();
     let seconds: Vec<f64> = times.iter().map(|t| t.value()).collect();
-    let config = RotationConfig { sample_rate_hz: rate, total_samples: synth.frames(), pulses_per_rev: 1 };
+    let config = RotationConfig {
+        sample_rate_hz: rate,
+        total_samples: synth.frames(),
+        pulses_per_rev: 1,
+    };
     let rotation = Arc::new(rotation_from_times(&seconds, &config).unwrap());
     let track = Track::new(rotation, 1, 1, 128);
     let mut instants: Vec<Instant> = Vec::new();
@@ -46,7 +58,12 @@ fn worst_error(hours: f64, order: f64) -> f64 {
         .iter()
         .enumerate()
         .map(|(i, instant)| {
-            plan.taps(instant.index as i64, instant.fraction, instant.step, &mut taps);
+            plan.taps(
+                instant.index as i64,
+                instant.fraction,
+                instant.step,
+                &mut taps,
+            );
             let value = taps.apply(&plan, &samples[0], from as i64);
             let rev = first_rev + 100.0 + (i / 128) as f64;
             let turns = (order * rev).fract() + order * (i % 128) as f64 / 128.0;
@@ -61,7 +78,10 @@ fn a_day_in_is_as_good_as_the_first_minute() {
         for hours in [0.02, 30.0] {
             let error = 20.0 * worst_error(hours, order).log10();
             println!("order {order}, {hours} h: {error:.1} dB");
-            assert!(error < -120.0, "order {order} after {hours} h: {error:.1} dB");
+            assert!(
+                error < -120.0,
+                "order {order} after {hours} h: {error:.1} dB"
+            );
         }
     }
 }

@@ -4,7 +4,8 @@
 
 use serde_json::Value;
 use shaftwise_orders::{
-    Average, SpectrumAccumulator, SpectrumConfig, SpectrumPlan, SynchronousAccumulator, revolution_orders,
+    Average, SpectrumAccumulator, SpectrumConfig, SpectrumPlan, SynchronousAccumulator,
+    revolution_orders,
 };
 use shaftwise_signal::{Window, chi_square_quantile, normal_quantile};
 use std::sync::Arc;
@@ -14,7 +15,12 @@ fn values() -> Value {
 }
 
 fn numbers(value: &Value) -> Vec<f64> {
-    value.as_array().unwrap().iter().map(|v| v.as_f64().unwrap()).collect()
+    value
+        .as_array()
+        .unwrap()
+        .iter()
+        .map(|v| v.as_f64().unwrap())
+        .collect()
 }
 
 /// The script's test signal: whole-number arithmetic.
@@ -37,13 +43,23 @@ fn averaged_spectra_are_those_of_scipy_welch() {
         ("welch_kaiser18_50", Window::Kaiser { beta: 18.0 }, 128, 8),
         ("welch_hamming_0", Window::Hamming, 256, 2),
     ] {
-        let config = SpectrumConfig { window, block: 256, hop, lines: 129, average: Average::Power };
+        let config = SpectrumConfig {
+            window,
+            block: 256,
+            hop,
+            lines: 129,
+            average: Average::Power,
+        };
         let plan = Arc::new(SpectrumPlan::new(config).unwrap());
         let mut scratch = plan.scratch();
         let mut sums = SpectrumAccumulator::new(plan.clone(), 1);
         let blocks = (8192 - 256) / hop + 1;
         for block in 0..blocks {
-            sums.push(block * 12 / blocks, [&x[block * hop..block * hop + 256]], &mut scratch);
+            sums.push(
+                block * 12 / blocks,
+                [&x[block * hop..block * hop + 256]],
+                &mut scratch,
+            );
         }
         let ours = sums.finish().remove(0).shown;
         let theirs = numbers(&values[name]);
@@ -54,7 +70,12 @@ fn averaged_spectra_are_those_of_scipy_welch() {
             let miss = (ours[line] - theirs[line]).abs();
             // Transforms of 256 points and sums of 125 blocks: 1e-13 of the largest is generous. Beyond
             // its lobe Kaiser's window still passes 1e-7 of the mean's amplitude, crossed with the line.
-            assert!(miss < 1e-13 * top + 1e-8 * theirs[line], "{name}, line {line}: {} {}", ours[line], theirs[line]);
+            assert!(
+                miss < 1e-13 * top + 1e-8 * theirs[line],
+                "{name}, line {line}: {} {}",
+                ours[line],
+                theirs[line]
+            );
         }
     }
 }
@@ -68,7 +89,10 @@ fn the_mean_revolution_is_that_of_numpy() {
         sums.push(r * 12 / 41, [revolution]);
     }
     let average = sums.finish().remove(0);
-    for (ours, name) in [(&average.mean, "revolution_mean"), (&average.sd, "revolution_sd")] {
+    for (ours, name) in [
+        (&average.mean, "revolution_mean"),
+        (&average.sd, "revolution_sd"),
+    ] {
         for (a, b) in ours.iter().zip(numbers(&values[name])) {
             assert!((a - b).abs() < 1e-14, "{name}: {a} {b}");
         }

@@ -8,7 +8,8 @@
 use crate::pass_one::{shrunk, slab_frames};
 use crate::{Control, Error};
 use shaftwise_orders::{
-    EPOCHS, Instant, SpectrumAccumulator, SpectrumPlan, SpectrumScratch, Stretch, SynchronousAccumulator, Track,
+    EPOCHS, Instant, SpectrumAccumulator, SpectrumPlan, SpectrumScratch, Stretch,
+    SynchronousAccumulator, Track,
 };
 use shaftwise_recording::{Recording, first_non_finite};
 use shaftwise_signal::{
@@ -86,10 +87,14 @@ impl Sums {
     pub(crate) fn new(consumer: &Consumer, chunk_revs: u64) -> Self {
         let channels = consumer.slots.len();
         match &consumer.feed {
-            Feed::Spectrum(plan) => Self::Spectrum(SpectrumAccumulator::new(plan.clone(), channels)),
-            Feed::Synchronous => {
-                Self::Synchronous(SynchronousAccumulator::new(consumer.block, channels, chunk_revs))
+            Feed::Spectrum(plan) => {
+                Self::Spectrum(SpectrumAccumulator::new(plan.clone(), channels))
             }
+            Feed::Synchronous => Self::Synchronous(SynchronousAccumulator::new(
+                consumer.block,
+                channels,
+                chunk_revs,
+            )),
         }
     }
 
@@ -120,7 +125,12 @@ impl<'a> PassTwo<'a> {
     pub(crate) fn new(recording: &'a Recording, tracks: &'a [TrackWork], chunk_revs: u64) -> Self {
         let conversions = tracks
             .iter()
-            .map(|work| work.slots.iter().map(|_| (0..LEVELS).map(|_| OnceLock::new()).collect()).collect())
+            .map(|work| {
+                work.slots
+                    .iter()
+                    .map(|_| (0..LEVELS).map(|_| OnceLock::new()).collect())
+                    .collect()
+            })
             .collect();
         Self {
             recording,
@@ -182,24 +192,44 @@ pub(crate) fn levels(step: f64, slots: &[Slot], sample_rate_hz: f64) -> u32 {
 
 impl PassTwo<'_> {
     /// Works one chunk out: sums by track and consumer.
-    pub(crate) fn work(&self, chunk: &Chunk, space: &mut Space, control: &CancelOnly<'_>) -> Result<Vec<Vec<Sums>>, Error> {
+    pub(crate) fn work(
+        &self,
+        chunk: &Chunk,
+        space: &mut Space,
+        control: &CancelOnly<'_>,
+    ) -> Result<Vec<Vec<Sums>>, Error> {
         if control.0.load(Ordering::Relaxed) {
             return Err(Error::Cancelled);
         }
-        let parts: Vec<Option<Part>> = self.tracks.iter().map(|work| self.part(work, chunk)).collect();
+        let parts: Vec<Option<Part>> = self
+            .tracks
+            .iter()
+            .map(|work| self.part(work, chunk))
+            .collect();
         let mut sums: Vec<Vec<Sums>> = self
             .tracks
             .iter()
-            .map(|work| work.consumers.iter().map(|c| Sums::new(c, self.chunk_revs)).collect())
+            .map(|work| {
+                work.consumers
+                    .iter()
+                    .map(|c| Sums::new(c, self.chunk_revs))
+                    .collect()
+            })
             .collect();
-        let active = || parts.iter().enumerate().filter_map(|(i, part)| Some((i, part.as_ref()?)));
+        let active = || {
+            parts
+                .iter()
+                .enumerate()
+                .filter_map(|(i, part)| Some((i, part.as_ref()?)))
+        };
         let Some(from) = active().map(|(_, part)| part.from).min() else {
             return Ok(sums);
         };
         let to = active().map(|(_, part)| part.to).max().unwrap_or(from);
 
-        let mut channels: Vec<usize> =
-            active().flat_map(|(i, _)| self.tracks[i].slots.iter().map(|slot| slot.channel)).collect();
+        let mut channels: Vec<usize> = active()
+            .flat_map(|(i, _)| self.tracks[i].slots.iter().map(|slot| slot.channel))
+            .collect();
         channels.sort_unstable();
         channels.dedup();
         let mut wanted: Vec<u32> = active().map(|(_, part)| part.level).collect();
@@ -210,19 +240,27 @@ impl PassTwo<'_> {
         for (number, part) in active() {
             let work = &self.tracks[number];
             self.resample(number, part, &channels, space)?;
-            for (index, (consumer, sums)) in work.consumers.iter().zip(&mut sums[number]).enumerate() {
+            for (index, (consumer, sums)) in
+                work.consumers.iter().zip(&mut sums[number]).enumerate()
+            {
                 let before: u64 = consumer.blocks[..chunk.window].iter().sum();
                 let total = consumer.total_blocks();
                 let stretch = work.stretches[chunk.window].map_or(0, |s| s.first);
                 for block in part.blocks[index].clone() {
                     let epoch = (EPOCHS as u64 * (before + block) / total) as usize;
-                    let start = (stretch + block as i64 * consumer.hop as i64 - part.first) as usize;
+                    let start =
+                        (stretch + block as i64 * consumer.hop as i64 - part.first) as usize;
                     let grid = &space.grid;
-                    let blocks = consumer.slots.iter().map(|slot| &grid[*slot][start..start + consumer.block]);
+                    let blocks = consumer
+                        .slots
+                        .iter()
+                        .map(|slot| &grid[*slot][start..start + consumer.block]);
                     match (&mut *sums, &consumer.feed) {
                         (Sums::Spectrum(sums), Feed::Spectrum(plan)) => {
-                            let scratch =
-                                space.spectra.entry((number, index)).or_insert_with(|| plan.scratch());
+                            let scratch = space
+                                .spectra
+                                .entry((number, index))
+                                .or_insert_with(|| plan.scratch());
                             sums.push(epoch, blocks, scratch);
                         }
                         (Sums::Synchronous(sums), _) => sums.push(epoch, blocks),
@@ -241,7 +279,10 @@ impl PassTwo<'_> {
         let stretch = work.stretches[chunk.window]?;
         let starts_before = |index: i64, limit: SamplePosition| {
             let instant = work.track.instant(stretch.section, index);
-            SamplePosition { index: instant.index, fraction: instant.fraction } < limit
+            SamplePosition {
+                index: instant.index,
+                fraction: instant.fraction,
+            } < limit
         };
         let mut blocks = Vec::new();
         let (mut first, mut end) = (i64::MAX, i64::MIN);
@@ -260,8 +301,16 @@ impl PassTwo<'_> {
             return None;
         }
         let mut instants = Vec::new();
-        work.track.instants(stretch.section, first, (end - first) as usize, &mut instants);
-        let least = instants.iter().map(|i| i.step).fold(f64::INFINITY, f64::min);
+        work.track.instants(
+            stretch.section,
+            first,
+            (end - first) as usize,
+            &mut instants,
+        );
+        let least = instants
+            .iter()
+            .map(|i| i.step)
+            .fold(f64::INFINITY, f64::min);
         let level = levels(least, &work.slots, self.recording.sample_rate_hz());
         let (mut from, mut to) = (u64::MAX, 0);
         for instant in &instants {
@@ -269,7 +318,14 @@ impl PassTwo<'_> {
             from = from.min(instant.index.saturating_sub(reach));
             to = to.max(instant.index + reach + 2);
         }
-        Some(Part { blocks, first, instants, level, from, to: to.min(self.recording.frames()) })
+        Some(Part {
+            blocks,
+            first,
+            instants,
+            level,
+            from,
+            to: to.min(self.recording.frames()),
+        })
     }
 
     /// Decodes the channels and halves their rate down to every wanted level, into `space.signals`.
@@ -305,7 +361,13 @@ impl PassTwo<'_> {
             space.decoded.iter_mut().for_each(Vec::clear);
             let read = self
                 .recording
-                .read(first, frames, channels, &mut space.bytes, &mut space.decoded)
+                .read(
+                    first,
+                    frames,
+                    channels,
+                    &mut space.bytes,
+                    &mut space.decoded,
+                )
                 .map_err(Error::in_recording(self.recording.name()))?;
             if read < frames {
                 return Err(shrunk(self.recording, first + read as u64));
@@ -342,7 +404,11 @@ impl PassTwo<'_> {
                 "channel {} ({name}) holds a value that is no finite number at {time:.4} s (sample {sample})",
                 channel + 1
             ),
-            hint: format!("leave that stretch out, such as --exclude {:.2}:{:.2}=gap", time - 0.5, time + 0.5),
+            hint: format!(
+                "leave that stretch out, such as --exclude {:.2}:{:.2}=gap",
+                time - 0.5,
+                time + 0.5
+            ),
         }
     }
 
@@ -354,25 +420,33 @@ impl PassTwo<'_> {
         channels: &[usize],
         space: &mut Space,
     ) -> Result<(), Error> {
-        let signal =
-            space.signals.iter().find(|s| s.level == part.level).expect("every track's level was filled");
+        let signal = space
+            .signals
+            .iter()
+            .find(|s| s.level == part.level)
+            .expect("every track's level was filled");
         let rate = self.recording.sample_rate_hz() / f64::from(1u32 << part.level);
         let slots = &self.tracks[number].slots;
         let samples_of = |slot: &Slot| {
-            let place = channels.binary_search(&slot.channel).expect("every slot's channel was read");
+            let place = channels
+                .binary_search(&slot.channel)
+                .expect("every slot's channel was read");
             signal.channels[place].as_slice()
         };
         space.converted.resize_with(slots.len(), Vec::new);
         for (index, slot) in slots.iter().enumerate() {
-            let Some(conversion) = slot.conversion else { continue };
+            let Some(conversion) = slot.conversion else {
+                continue;
+            };
             let cell = &self.conversions[number][index][part.level as usize];
             let plan = match cell.get() {
                 Some(plan) => plan,
                 None => {
-                    let plan = ConversionPlan::new(conversion, rate).map_err(|e| Error::Setting {
-                        what: e.to_string(),
-                        hint: "the sample rate is too low for this conversion".to_owned(),
-                    })?;
+                    let plan =
+                        ConversionPlan::new(conversion, rate).map_err(|e| Error::Setting {
+                            what: e.to_string(),
+                            hint: "the sample rate is too low for this conversion".to_owned(),
+                        })?;
                     cell.get_or_init(|| plan)
                 }
             };
@@ -400,7 +474,8 @@ impl PassTwo<'_> {
         for instant in &part.instants {
             let index = (instant.index >> part.level) as i64;
             let fraction = ((instant.index & mask) as f64 + instant.fraction) / scale;
-            self.interpolation.taps(index, fraction, instant.step / scale, &mut space.taps);
+            self.interpolation
+                .taps(index, fraction, instant.step / scale, &mut space.taps);
             for ((start, samples), out) in sources.iter().zip(&mut space.grid) {
                 out.push(space.taps.apply(&self.interpolation, samples, *start));
             }
@@ -423,7 +498,11 @@ fn partition(count: u64, before: impl Fn(u64) -> bool) -> u64 {
     let (mut low, mut high) = (0, count);
     while low < high {
         let middle = low + (high - low) / 2;
-        if before(middle) { low = middle + 1 } else { high = middle }
+        if before(middle) {
+            low = middle + 1
+        } else {
+            high = middle
+        }
     }
     low
 }

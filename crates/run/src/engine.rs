@@ -8,7 +8,9 @@ use crate::spinning::Spinning;
 use crate::workers::for_each_in_order;
 use crate::{Control, Error, Job, Progress, RecordingFacts, RunResult, pass_one};
 use shaftwise_recording::{ChannelSetup, OpenOptions, Quantity, Recording};
-use shaftwise_rotation::{Edge, RotationConfig, TachConfig, rotation_from_scan, rotation_from_times};
+use shaftwise_rotation::{
+    Edge, RotationConfig, TachConfig, rotation_from_scan, rotation_from_times,
+};
 use shaftwise_signal::InterpolationPlan;
 use std::path::Path;
 use std::sync::Arc;
@@ -29,7 +31,9 @@ pub fn execute(job: &Job, control: &Control<'_>) -> Result<RunResult, Error> {
     if tach.is_none() && job.tach.times.is_none() {
         return Err(Error::Setting {
             what: "no tach: orders need to know the shaft's angle".to_owned(),
-            hint: "name its channel with --tach CH, or a file of pulse times with --tach-times FILE".to_owned(),
+            hint:
+                "name its channel with --tach CH, or a file of pulse times with --tach-times FILE"
+                    .to_owned(),
         });
     }
     let rate = recording.sample_rate_hz();
@@ -37,8 +41,12 @@ pub fn execute(job: &Job, control: &Control<'_>) -> Result<RunResult, Error> {
         Some(file) => Some(read_times(&job.base.join(file), job.tach.tach_delay_s)?),
         None => None,
     };
-    let first =
-        pass_one::read(&recording, tach.map(|t| (t, tach_config(&job.tach, rate))), job.threads, control)?;
+    let first = pass_one::read(
+        &recording,
+        tach.map(|t| (t, tach_config(&job.tach, rate))),
+        job.threads,
+        control,
+    )?;
     let config = RotationConfig {
         sample_rate_hz: rate,
         total_samples: recording.frames(),
@@ -64,7 +72,6 @@ pub fn execute(job: &Job, control: &Control<'_>) -> Result<RunResult, Error> {
     });
     let speed = outcome::speed(&spinning, step_s.unwrap_or(SpeedSettings::default().step));
     let analyses = outcome::outcomes(&spinning, &plan, &job.analyses, totals, &speed);
-    warnings.extend(analyses.iter().flat_map(|outcome| outcome.warnings.iter().cloned()));
     let mut said = std::collections::HashSet::new();
     warnings.retain(|warning| said.insert(warning.clone()));
     Ok(RunResult {
@@ -96,7 +103,10 @@ fn tach_config(tach: &TachSettings, sample_rate_hz: f64) -> TachConfig {
 }
 
 fn open(settings: &RecordingSettings, base: &Path) -> Result<Recording, Error> {
-    let mut options = OpenOptions { sample_rate_hz: settings.sample_rate_hz, channels: Vec::new() };
+    let mut options = OpenOptions {
+        sample_rate_hz: settings.sample_rate_hz,
+        channels: Vec::new(),
+    };
     for (place, channel) in settings.channels.iter().enumerate() {
         let quantity = match &channel.quantity {
             None => None,
@@ -126,7 +136,10 @@ fn open(settings: &RecordingSettings, base: &Path) -> Result<Recording, Error> {
 /// Pulse times, one a line, seconds from the first sample.
 fn read_times(path: &Path, delay_s: f64) -> Result<Vec<f64>, Error> {
     let file = path.display().to_string();
-    let text = std::fs::read_to_string(path).map_err(|source| Error::File { file: file.clone(), source })?;
+    let text = std::fs::read_to_string(path).map_err(|source| Error::File {
+        file: file.clone(),
+        source,
+    })?;
     let mut times = Vec::new();
     for (number, line) in text.lines().enumerate() {
         let line = line.trim();
@@ -140,7 +153,10 @@ fn read_times(path: &Path, delay_s: f64) -> Result<Vec<f64>, Error> {
                     file,
                     line: number + 1,
                     column: 1,
-                    what: format!("found '{}', expected a pulse time in seconds", line.chars().take(40).collect::<String>()),
+                    what: format!(
+                        "found '{}', expected a pulse time in seconds",
+                        line.chars().take(40).collect::<String>()
+                    ),
                     hint: "one time a line, counted from the first sample".to_owned(),
                 });
             }
@@ -158,7 +174,12 @@ fn pass_two(
     let new_sums = || -> Vec<Vec<Sums>> {
         plan.tracks
             .iter()
-            .map(|work| work.consumers.iter().map(|c| Sums::new(c, plan.chunk_revs)).collect())
+            .map(|work| {
+                work.consumers
+                    .iter()
+                    .map(|c| Sums::new(c, plan.chunk_revs))
+                    .collect()
+            })
             .collect()
     };
     let mut totals = new_sums();
@@ -183,5 +204,10 @@ fn pass_two(
             true
         },
     )?;
-    Ok(Totals(totals.into_iter().map(|t| t.into_iter().map(Some).collect()).collect()))
+    Ok(Totals(
+        totals
+            .into_iter()
+            .map(|t| t.into_iter().map(Some).collect())
+            .collect(),
+    ))
 }

@@ -53,7 +53,10 @@ pub enum Error {
 impl Error {
     /// Puts the recording's name to what its reader says.
     pub(crate) fn in_recording(file: &str) -> impl Fn(shaftwise_recording::Error) -> Self {
-        move |source| Self::Recording { file: file.to_owned(), source }
+        move |source| Self::Recording {
+            file: file.to_owned(),
+            source,
+        }
     }
 
     /// What the user can do about it.

@@ -3,11 +3,11 @@
 use crate::chunk::Sums;
 use crate::plan::{AnalysisPlan, AveragesPlan, Place, Plan};
 use crate::results::{
-    AnalysisResult, CompareChannel, CompareResult, ComparedPeak, ConvergenceResult, LedgerLine, OnsetResult, Outcome,
-    OverallResult, PeakResult, PeakVerdict, PulseFacts, SpectrumChannel, SpectrumResult, SpeedCurveResult, SpeedResult,
-    SynchronousChannel, SynchronousResult,
+    AnalysisResult, CompareChannel, CompareResult, ComparedPeak, ConvergenceResult, LedgerLine,
+    OnsetResult, Outcome, OverallResult, PeakResult, PeakVerdict, PulseFacts, SpectrumChannel,
+    SpectrumResult, SpeedCurveResult, SpeedResult, SynchronousChannel, SynchronousResult,
 };
-use crate::settings::{Analysis, Averaging, AxisChoice, CompareSettings, Detector, SpectrumSettings};
+use crate::settings::{Analysis, Averaging, AxisChoice, Detector, SpectrumSettings};
 use crate::spinning::Spinning;
 use shaftwise_findings::{
     SmearModel, SpectrumReading, Verdict, WindowLobe, compare_peak, read_spectrum,
@@ -56,8 +56,16 @@ pub(crate) fn speed(spinning: &Spinning, step_s: f64) -> SpeedResult {
         timing_sigma_s: rotation.timing_sigma_s,
         edge_width_deg: rotation.edge_width_deg.unwrap_or(f64::NAN),
         pulse_width_deg: rotation.pulse_width_deg.unwrap_or(f64::NAN),
-        sections_s: rotation.sections.iter().map(|s| span(s.start(), s.end())).collect(),
-        selected_s: spinning.windows.iter().map(|w| span(w.from, w.to)).collect(),
+        sections_s: rotation
+            .sections
+            .iter()
+            .map(|s| span(s.start(), s.end()))
+            .collect(),
+        selected_s: spinning
+            .windows
+            .iter()
+            .map(|w| span(w.from, w.to))
+            .collect(),
         phase_reference: match rotation.phase_reference {
             PhaseReference::Pulse => "pulse",
             PhaseReference::Arbitrary => "arbitrary",
@@ -124,12 +132,12 @@ pub(crate) fn outcomes(
                     }
                     AnalysisResult::Synchronous(synchronous(plan, totals.revolutions(*place)))
                 }
-                (Analysis::Compare(asked), AnalysisPlan::Compare { tracked, smeared, plan: averages }) => {
+                (Analysis::Compare(_), AnalysisPlan::Compare { tracked, smeared, plan: averages }) => {
                     warnings.extend(averages.warnings.iter().cloned());
                     fill(&mut settings, averages);
                     let model = smear_model(spinning, plan, *tracked, averages);
                     let (tracked, smeared) = (totals.spectra(*tracked), totals.spectra(*smeared));
-                    AnalysisResult::Compare(compare(asked, averages, &tracked, &smeared, &model))
+                    AnalysisResult::Compare(compare(averages, &tracked, &smeared, &model))
                 }
                 _ => AnalysisResult::Speed(speed.clone()),
             };
@@ -150,7 +158,10 @@ fn settings_of(analysis: &Analysis) -> serde_json::Value {
 fn fill(settings: &mut serde_json::Value, plan: &AveragesPlan) {
     if let Some(map) = settings.as_object_mut() {
         map.insert("max_order".to_owned(), plan.max_order.into());
-        map.insert("channel".to_owned(), plan.channels.iter().map(|c| c.number).collect());
+        map.insert(
+            "channel".to_owned(),
+            plan.channels.iter().map(|c| c.number).collect(),
+        );
     }
 }
 
@@ -164,24 +175,45 @@ pub fn detector_factor(detector: Detector) -> f64 {
     }
 }
 
-fn reading(plan: &AveragesPlan, repeatability_db: f64, axis: AxisChoice) -> SpectrumReading {
+/// `power`: the channel's conversion in time, as a power of j2πf.
+fn reading(
+    plan: &AveragesPlan,
+    repeatability_db: f64,
+    axis: AxisChoice,
+    power: i32,
+) -> SpectrumReading {
+    // The corner itself, at the lowest speed; up to twice of it levels are marked.
+    let first_line = if power == 0 {
+        1
+    } else {
+        (0.5 * plan.facts.corner_order / plan.facts.order_step).ceil() as usize
+    };
     SpectrumReading {
         confidence: CONFIDENCE,
         false_alarm: FALSE_ALARM,
         repeatability_db,
         angle_sigma_rev: plan.angle_sigma_rev,
-        line_order: if axis == AxisChoice::Orders { plan.facts.order_step } else { 0.0 },
+        line_order: if axis == AxisChoice::Orders {
+            plan.facts.order_step
+        } else {
+            0.0
+        },
         usable_lines: usable_lines(plan),
+        first_line,
+        floor_exponent: 2.0 * f64::from(power),
     }
 }
 
 /// Lines within the sample rate's reach at the highest speed.
 fn usable_lines(plan: &AveragesPlan) -> usize {
-    (plan.facts.reachable_order.min(plan.max_order) / plan.facts.order_step + 1e-9).floor() as usize + 1
+    (plan.facts.reachable_order.min(plan.max_order) / plan.facts.order_step + 1e-9).floor() as usize
+        + 1
 }
 
 fn transform(plan: &AveragesPlan) -> &SpectrumPlan {
-    plan.spectrum.as_deref().expect("spectra are planned with their transform")
+    plan.spectrum
+        .as_deref()
+        .expect("spectra are planned with their transform")
 }
 
 fn spectrum(
@@ -192,13 +224,16 @@ fn spectrum(
 ) -> SpectrumResult {
     let fft = transform(plan);
     let lobe = WindowLobe::new(fft.window());
-    let reading = reading(plan, asked.repeatability, asked.axis);
     let facts = &plan.facts;
     let per_line = match asked.axis {
         AxisChoice::Orders => facts.order_step,
         AxisChoice::Hz => facts.order_step * facts.mean_speed_rev_s,
     };
-    let width = if asked.density { facts.noise_bandwidth_lines * per_line } else { 1.0 };
+    let width = if asked.density {
+        facts.noise_bandwidth_lines * per_line
+    } else {
+        1.0
+    };
     if asked.averaging == Averaging::PeakHold {
         warnings.push("peak hold has no bounds: they belong to averages".to_owned());
     }
@@ -206,8 +241,10 @@ fn spectrum(
         .channels
         .iter()
         .zip(&plan.detectors)
+        .zip(&plan.powers)
         .zip(spectra)
-        .map(|((channel, detector), mut spectrum)| {
+        .map(|(((channel, detector), power), mut spectrum)| {
+            let reading = reading(plan, asked.repeatability, asked.axis, *power);
             let blocks = spectrum.blocks;
             if let Averaging::Exponential = asked.averaging {
                 // A fading average scatters like (2 − α)/α = N blocks.
@@ -220,7 +257,15 @@ fn spectrum(
             let usable = reading.usable_lines.min(lines);
             let level = |power: f64| (power / width).sqrt();
             let curve = |powers: &[f64]| -> Vec<f64> {
-                (0..lines).map(|k| if k < usable { level(powers[k]) } else { f64::NAN }).collect()
+                (0..lines)
+                    .map(|k| {
+                        if k < usable {
+                            level(powers[k])
+                        } else {
+                            f64::NAN
+                        }
+                    })
+                    .collect()
             };
             // What the averaging shows may differ from the mean of power; bounds go with it.
             let bound = |bounds: &[f64]| -> Vec<f64> {
@@ -248,8 +293,16 @@ fn spectrum(
                         order: at_orders.then_some(place),
                         frequency_hz: (!at_orders).then_some(place),
                         rms: level(peak.power * shown),
-                        lower: if held { f64::NAN } else { level(peak.lower * shown) },
-                        upper: if held { f64::NAN } else { level(peak.upper * shown) },
+                        lower: if held {
+                            f64::NAN
+                        } else {
+                            level(peak.lower * shown)
+                        },
+                        upper: if held {
+                            f64::NAN
+                        } else {
+                            level(peak.upper * shown)
+                        },
                         verdict: match peak.verdict {
                             Verdict::Repeatable => PeakVerdict::Repeatable,
                             Verdict::MoreAverages => PeakVerdict::MoreAverages,
@@ -306,7 +359,8 @@ fn synchronous(
             let orders = revolution_orders(&average.mean, highest);
             let length = average.mean.len();
             let root = (average.revolutions as f64).sqrt();
-            let (revolutions, seen): (Vec<u64>, Vec<f64>) = average.convergence.iter().copied().unzip();
+            let (revolutions, seen): (Vec<u64>, Vec<f64>) =
+                average.convergence.iter().copied().unzip();
             let lead = |phase: f64| 360.0 * phase;
             let lag = |phase: f64| {
                 let lag = (-360.0 * phase).rem_euclid(360.0);
@@ -316,7 +370,9 @@ fn synchronous(
             SynchronousChannel {
                 channel: channel.clone(),
                 revolutions: average.revolutions,
-                angle_deg: (0..length).map(|m| 360.0 * m as f64 / length as f64).collect(),
+                angle_deg: (0..length)
+                    .map(|m| 360.0 * m as f64 / length as f64)
+                    .collect(),
                 sd_of_mean: average.sd.iter().map(|s| s / root).collect(),
                 orders: orders.iter().map(|o| f64::from(o.order)).collect(),
                 amplitude_peak: orders.iter().map(|o| o.amplitude).collect(),
@@ -327,7 +383,10 @@ fn synchronous(
                 residual_rms: average.residual_rms,
                 total_rms: average.total_rms,
                 convergence: ConvergenceResult {
-                    law_db: revolutions.iter().map(|n| 10.0 * (*n as f64).log10()).collect(),
+                    law_db: revolutions
+                        .iter()
+                        .map(|n| 10.0 * (*n as f64).log10())
+                        .collect(),
                     revolutions,
                     seen_db: seen,
                 },
@@ -336,11 +395,14 @@ fn synchronous(
             }
         })
         .collect();
-    SynchronousResult { blocks: plan.facts.clone(), channels, files: Vec::new() }
+    SynchronousResult {
+        blocks: plan.facts.clone(),
+        channels,
+        files: Vec::new(),
+    }
 }
 
 fn compare(
-    _asked: &CompareSettings,
     plan: &AveragesPlan,
     tracked: &[AveragedSpectrum],
     smeared: &[AveragedSpectrum],
@@ -348,7 +410,6 @@ fn compare(
 ) -> CompareResult {
     let fft = transform(plan);
     let lobe = WindowLobe::new(fft.window());
-    let reading = reading(plan, 1.0, AxisChoice::Orders);
     let facts = &plan.facts;
     let spread = (facts.speed_rpm.max - facts.speed_rpm.min) / facts.speed_rpm.mean;
     let highest = facts.reachable_order.min(plan.max_order);
@@ -357,8 +418,10 @@ fn compare(
         .channels
         .iter()
         .zip(&plan.detectors)
+        .zip(&plan.powers)
         .zip(tracked.iter().zip(smeared))
-        .map(|((channel, detector), (tracked, smeared))| {
+        .map(|(((channel, detector), power), (tracked, smeared))| {
+            let reading = reading(plan, 1.0, AxisChoice::Orders, *power);
             let findings = read_spectrum(tracked, fft, &lobe, &reading);
             let step = facts.order_step;
             let peaks: Vec<ComparedPeak> = findings
@@ -403,7 +466,10 @@ fn compare(
             CompareChannel {
                 channel: channel.clone(),
                 peaks,
-                onset: OnsetResult { predicted_order, seen_order },
+                onset: OnsetResult {
+                    predicted_order,
+                    seen_order,
+                },
                 orders: (0..tracked.mean.len()).map(|k| k as f64 * step).collect(),
                 tracked_rms: levels(tracked),
                 smeared_rms: levels(smeared),
@@ -420,12 +486,21 @@ fn compare(
 }
 
 /// How far the shaft runs ahead of steady turning within blocks spread over the selection.
-fn smear_model(spinning: &Spinning, plan: &Plan, tracked: Place, averages: &AveragesPlan) -> SmearModel {
+fn smear_model(
+    spinning: &Spinning,
+    plan: &Plan,
+    tracked: Place,
+    averages: &AveragesPlan,
+) -> SmearModel {
     const POINTS: usize = 64;
     const BLOCKS: u64 = 48;
     let work = &plan.tracks[tracked.track];
     let consumer = &work.consumers[tracked.consumer];
-    let window = transform(averages).config().window.samples(POINTS).unwrap_or_else(|_| vec![1.0; POINTS]);
+    let window = transform(averages)
+        .config()
+        .window
+        .samples(POINTS)
+        .unwrap_or_else(|_| vec![1.0; POINTS]);
     let speed = spinning.mean;
     let rate = spinning.rotation.sample_rate_hz;
     let ratio = work.track.ratio();
@@ -442,14 +517,24 @@ fn smear_model(spinning: &Spinning, plan: &Plan, tracked: Place, averages: &Aver
             if (number - 1) % stride != 0 {
                 continue;
             }
-            let instant = work.track.instant(stretch.section, stretch.first + block as i64 * consumer.hop as i64);
-            let start = SamplePosition { index: instant.index, fraction: instant.fraction };
+            let instant = work.track.instant(
+                stretch.section,
+                stretch.first + block as i64 * consumer.hop as i64,
+            );
+            let start = SamplePosition {
+                index: instant.index,
+                fraction: instant.fraction,
+            };
             let first = section.angle_at(start);
             let lead: Vec<f64> = (0..POINTS)
                 .map(|n| {
                     let t = seconds * n as f64 / POINTS as f64;
                     let here = SamplePosition::new(start.index, start.fraction + t * rate);
-                    let here = if here > section.end() { section.end() } else { here };
+                    let here = if here > section.end() {
+                        section.end()
+                    } else {
+                        here
+                    };
                     let (rev, fraction) = section.angle_at(here);
                     ratio * ((rev - first.0) as f64 + (fraction - first.1) - speed * t)
                 })

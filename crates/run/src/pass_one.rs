@@ -35,7 +35,9 @@ pub(crate) fn read(
             if scanner.is_some() {
                 let mut bytes = Vec::new();
                 each_slab(recording, control, |first, frames| {
-                    let read = recording.read_raw(first, frames, &mut bytes).map_err(&failed)?;
+                    let read = recording
+                        .read_raw(first, frames, &mut bytes)
+                        .map_err(&failed)?;
                     scan(recording, &bytes, &channels, &mut scanner)?;
                     Ok(read)
                 })?;
@@ -45,7 +47,9 @@ pub(crate) fn read(
         HashParts::Sequential(mut hasher) if threads <= 1 => {
             let mut bytes = Vec::new();
             each_slab(recording, control, |first, frames| {
-                let read = recording.read_raw(first, frames, &mut bytes).map_err(&failed)?;
+                let read = recording
+                    .read_raw(first, frames, &mut bytes)
+                    .map_err(&failed)?;
                 hasher.update(&bytes);
                 scan(recording, &bytes, &channels, &mut scanner)?;
                 Ok(read)
@@ -69,13 +73,17 @@ pub(crate) fn read(
             });
             let result = each_slab(recording, control, |first, frames| {
                 let mut bytes = back.recv().unwrap_or_default();
-                let read = recording.read_raw(first, frames, &mut bytes).map_err(&failed)?;
+                let read = recording
+                    .read_raw(first, frames, &mut bytes)
+                    .map_err(&failed)?;
                 scan(recording, &bytes, &channels, &mut scanner)?;
                 let _ = full.send(bytes);
                 Ok(read)
             });
             drop(full);
-            let sha256 = hashing.join().unwrap_or_else(|panic| std::panic::resume_unwind(panic));
+            let sha256 = hashing
+                .join()
+                .unwrap_or_else(|panic| std::panic::resume_unwind(panic));
             result?;
             sha256.map_err(&failed)
         })?,
@@ -114,7 +122,10 @@ fn each_slab(
         if control.cancel.load(Ordering::Relaxed) {
             return Err(Error::Cancelled);
         }
-        (control.progress)(Progress { stage: "reading the tach", share: first as f64 / total as f64 });
+        (control.progress)(Progress {
+            stage: "reading the tach",
+            share: first as f64 / total as f64,
+        });
         let wanted = frames.min(usize::try_from(total - first).unwrap_or(frames));
         let got = read(first, wanted)?;
         if got < wanted {

@@ -2,14 +2,14 @@
 //!
 //! Analyses that need the same samples share a track and are resampled once.
 
+use crate::Error;
 use crate::chunk::{Chunk, Consumer, Feed, Slot, TrackWork};
 use crate::results::{BlockFacts, ChannelFacts};
 use crate::settings::{
-    Analysis, Averaging, AxisChoice, ChannelPick, CompareSettings, Detector, ShownAs, SpectrumSettings,
-    SynchronousSettings, WindowChoice,
+    Analysis, Averaging, AxisChoice, ChannelPick, CompareSettings, Detector, ShownAs,
+    SpectrumSettings, SynchronousSettings, WindowChoice,
 };
 use crate::spinning::Spinning;
-use crate::Error;
 use shaftwise_machine::Ratio;
 use shaftwise_orders::{Average, Limits, SpectrumConfig, SpectrumPlan, Track, samples_per_rev};
 use shaftwise_recording::{Quantity, Recording};
@@ -34,6 +34,8 @@ pub(crate) struct Place {
 pub(crate) struct AveragesPlan {
     pub(crate) channels: Vec<ChannelFacts>,
     pub(crate) detectors: Vec<Detector>,
+    /// Conversion in time of each channel, as a power of j2πf; 0 for none.
+    pub(crate) powers: Vec<i32>,
     pub(crate) facts: BlockFacts,
     /// Highest order asked for, or the default.
     pub(crate) max_order: f64,
@@ -48,8 +50,15 @@ pub(crate) struct AveragesPlan {
 #[derive(Debug, Clone)]
 pub(crate) enum AnalysisPlan {
     Speed,
-    Averages { place: Place, plan: AveragesPlan },
-    Compare { tracked: Place, smeared: Place, plan: AveragesPlan },
+    Averages {
+        place: Place,
+        plan: AveragesPlan,
+    },
+    Compare {
+        tracked: Place,
+        smeared: Place,
+        plan: AveragesPlan,
+    },
 }
 
 /// Everything pass 2 has to do.
@@ -100,7 +109,13 @@ pub(crate) fn plan(
     spinning: &Spinning,
     analyses: &[Analysis],
 ) -> Result<Plan, Error> {
-    let mut planner = Planner { recording, tach, spinning, tracks: Vec::new(), keys: Vec::new() };
+    let mut planner = Planner {
+        recording,
+        tach,
+        spinning,
+        tracks: Vec::new(),
+        keys: Vec::new(),
+    };
     let analyses = analyses
         .iter()
         .map(|analysis| match analysis {
@@ -112,8 +127,17 @@ pub(crate) fn plan(
         .collect::<Result<Vec<_>, Error>>()?;
     let tracks = planner.tracks;
     let chunk_revs = chunk_revs(&tracks);
-    let chunks = if tracks.is_empty() { Vec::new() } else { chunks(spinning, chunk_revs) };
-    Ok(Plan { tracks, chunks, chunk_revs, analyses })
+    let chunks = if tracks.is_empty() {
+        Vec::new()
+    } else {
+        chunks(spinning, chunk_revs)
+    };
+    Ok(Plan {
+        tracks,
+        chunks,
+        chunk_revs,
+        analyses,
+    })
 }
 
 /// Revolutions of the tach's shaft in a chunk: eight of the longest block, so that what is computed
@@ -127,26 +151,44 @@ fn chunk_revs(tracks: &[TrackWork]) -> u64 {
         })
         .fold(0.0, f64::max);
     let eight = (8.0 * longest).ceil().max(64.0);
-    let revs = if eight <= 1024.0 { eight } else { (2.0 * longest).ceil().max(1024.0) };
+    let revs = if eight <= 1024.0 {
+        eight
+    } else {
+        (2.0 * longest).ceil().max(1024.0)
+    };
     (revs as u64).next_power_of_two()
 }
 
 fn chunks(spinning: &Spinning, chunk_revs: u64) -> Vec<Chunk> {
-    let end = SamplePosition { index: u64::MAX, fraction: 0.0 };
+    let end = SamplePosition {
+        index: u64::MAX,
+        fraction: 0.0,
+    };
     let step = i64::try_from(chunk_revs).unwrap_or(i64::MAX);
     let mut chunks = Vec::new();
     for (number, window) in spinning.windows.iter().enumerate() {
         let section = &spinning.rotation.sections[window.section];
-        let (first, last) = (section.angle_at(window.from).0, section.angle_at(window.to).0);
+        let (first, last) = (
+            section.angle_at(window.from).0,
+            section.angle_at(window.to).0,
+        );
         let mut from = SamplePosition::default();
         let mut rev = first.saturating_add(step);
         while rev < last {
             let to = section.at(rev, 0.0).position;
-            chunks.push(Chunk { window: number, from, to });
+            chunks.push(Chunk {
+                window: number,
+                from,
+                to,
+            });
             from = to;
             rev += step;
         }
-        chunks.push(Chunk { window: number, from, to: end });
+        chunks.push(Chunk {
+            window: number,
+            from,
+            to: end,
+        });
     }
     chunks
 }
@@ -169,15 +211,26 @@ impl Planner<'_> {
             Averaging::Power => Average::Power,
             Averaging::Amplitude => Average::Amplitude,
             Averaging::PeakHold => Average::PeakHold,
-            Averaging::Exponential => {
-                Average::Exponential { alpha: 2.0 / (settings.averages.unwrap_or(16) as f64 + 1.0) }
-            }
+            Averaging::Exponential => Average::Exponential {
+                alpha: 2.0 / (settings.averages.unwrap_or(16) as f64 + 1.0),
+            },
         };
-        let spectrum = spectrum_plan(&setup, settings.order_step, settings.window, settings.overlap, average)?;
+        let spectrum = spectrum_plan(
+            &setup,
+            settings.order_step,
+            settings.window,
+            settings.overlap,
+            average,
+        )?;
         let steady = settings.axis == AxisChoice::Hz;
         let track = self.track(steady, &setup)?;
         let blocks = self.blocks(track, spectrum.config().block, spectrum.config().hop);
-        let place = self.consume(track, &setup, Feed::Spectrum(spectrum.clone()), cap(&blocks, averages))?;
+        let place = self.consume(
+            track,
+            &setup,
+            Feed::Spectrum(spectrum.clone()),
+            cap(&blocks, averages),
+        )?;
         let plan = self.averages_plan(place, &mut setup, Some(spectrum), steady);
         Ok(AnalysisPlan::Averages { place, plan })
     }
@@ -195,7 +248,10 @@ impl Planner<'_> {
         let blocks = cap(&self.blocks(track, block, block), settings.averages);
         if blocks.iter().sum::<u64>() < 2 {
             return Err(Error::Setting {
-                what: format!("{} whole revolutions in the stretch that counts, expected at least 2", blocks.iter().sum::<u64>()),
+                what: format!(
+                    "{} whole revolutions in the stretch that counts, expected at least 2",
+                    blocks.iter().sum::<u64>()
+                ),
                 hint: "record longer, or widen --from and --to".to_owned(),
             });
         }
@@ -212,8 +268,13 @@ impl Planner<'_> {
             shown_as: settings.shown_as,
             detector: settings.detector,
         })?;
-        let spectrum =
-            spectrum_plan(&setup, settings.order_step, settings.window, settings.overlap, Average::Power)?;
+        let spectrum = spectrum_plan(
+            &setup,
+            settings.order_step,
+            settings.window,
+            settings.overlap,
+            Average::Power,
+        )?;
         let (block, hop) = (spectrum.config().block, spectrum.config().hop);
         let tracked = self.track(false, &setup)?;
         let smeared = self.track(true, &setup)?;
@@ -225,10 +286,19 @@ impl Planner<'_> {
             .map(|(a, b)| a.min(b))
             .collect();
         let blocks = cap(&both, settings.averages);
-        let tracked = self.consume(tracked, &setup, Feed::Spectrum(spectrum.clone()), blocks.clone())?;
+        let tracked = self.consume(
+            tracked,
+            &setup,
+            Feed::Spectrum(spectrum.clone()),
+            blocks.clone(),
+        )?;
         let smeared = self.consume(smeared, &setup, Feed::Spectrum(spectrum.clone()), blocks)?;
         let plan = self.averages_plan(tracked, &mut setup, Some(spectrum), false);
-        Ok(AnalysisPlan::Compare { tracked, smeared, plan })
+        Ok(AnalysisPlan::Compare {
+            tracked,
+            smeared,
+            plan,
+        })
     }
 
     /// Channels, ratio, highest order and conversions.
@@ -236,8 +306,10 @@ impl Planner<'_> {
         let rate = self.recording.sample_rate_hz();
         let ratio = match request.ratio {
             None => Ratio::ONE,
-            Some(text) => Ratio::parse(text)
-                .map_err(|e| Error::Setting { what: e.to_string(), hint: "--ratio A/B".to_owned() })?,
+            Some(text) => Ratio::parse(text).map_err(|e| Error::Setting {
+                what: e.to_string(),
+                hint: "--ratio A/B".to_owned(),
+            })?,
         };
         let picked = self.pick(request.channel)?;
         let mean_rpm = 60.0 * self.spinning.mean;
@@ -246,9 +318,13 @@ impl Planner<'_> {
         let (mut slots, mut channels, mut detectors) = (Vec::new(), Vec::new(), Vec::new());
         for index in picked {
             let channel = &self.recording.channels()[index];
-            let (quantity, power) = shown_quantity(channel.quantity, request.shown_as, &channel.name)?;
+            let (quantity, power) =
+                shown_quantity(channel.quantity, request.shown_as, &channel.name)?;
             let conversion = (power != 0).then_some(Conversion { power, corner_hz });
-            slots.push(Slot { channel: index, conversion });
+            slots.push(Slot {
+                channel: index,
+                conversion,
+            });
             channels.push(ChannelFacts {
                 number: channel.number,
                 name: channel.name.clone(),
@@ -259,14 +335,23 @@ impl Planner<'_> {
                 },
                 quantity: quantity.name().to_owned(),
             });
-            let usual =
-                if quantity == Quantity::Displacement { Detector::PeakToPeak } else { Detector::Rms };
+            let usual = if quantity == Quantity::Displacement {
+                Detector::PeakToPeak
+            } else {
+                Detector::Rms
+            };
             detectors.push(request.detector.unwrap_or(usual));
         }
         let converted = slots.iter().any(|slot: &Slot| slot.conversion.is_some());
         let filter_reach = if converted {
             // A level's own rounding of the reach is at most a sixtieth of it.
-            let reach = ConversionPlan::reach(Conversion { power: -1, corner_hz }, rate) as u64;
+            let reach = ConversionPlan::reach(
+                Conversion {
+                    power: -1,
+                    corner_hz,
+                },
+                rate,
+            ) as u64;
             reach + reach / 60 + 1
         } else {
             0
@@ -313,7 +398,11 @@ impl Planner<'_> {
             max_order,
             reachable_order,
             samples_per_rev: samples_per_rev(max_order),
-            corner_order: if converted { 2.0 * corner_hz / (self.spinning.min * turning) } else { 0.0 },
+            corner_order: if converted {
+                2.0 * corner_hz / (self.spinning.min * turning)
+            } else {
+                0.0
+            },
             filter_reach,
             warnings,
         })
@@ -322,8 +411,9 @@ impl Planner<'_> {
     fn pick(&self, picks: &Option<Vec<ChannelPick>>) -> Result<Vec<usize>, Error> {
         match picks {
             None => {
-                let all: Vec<usize> =
-                    (0..self.recording.channels().len()).filter(|i| Some(*i) != self.tach).collect();
+                let all: Vec<usize> = (0..self.recording.channels().len())
+                    .filter(|i| Some(*i) != self.tach)
+                    .collect();
                 if all.is_empty() {
                     return Err(Error::Setting {
                         what: "the recording holds no channel beside the tach, expected at least one sensor".to_owned(),
@@ -332,17 +422,28 @@ impl Planner<'_> {
                 }
                 Ok(all)
             }
-            Some(picks) => picks.iter().map(|pick| channel(self.recording, pick)).collect(),
+            Some(picks) => picks
+                .iter()
+                .map(|pick| channel(self.recording, pick))
+                .collect(),
         }
     }
 
     /// Finds or makes the track.
     fn track(&mut self, steady: bool, setup: &Setup) -> Result<usize, Error> {
-        let key = (steady, setup.ratio, setup.samples_per_rev, setup.filter_reach);
+        let key = (
+            steady,
+            setup.ratio,
+            setup.samples_per_rev,
+            setup.filter_reach,
+        );
         if let Some(place) = self.keys.iter().position(|k| *k == key) {
             return Ok(place);
         }
-        let limits = Limits { total_samples: self.recording.frames(), filter_reach: setup.filter_reach };
+        let limits = Limits {
+            total_samples: self.recording.frames(),
+            filter_reach: setup.filter_reach,
+        };
         let turning = Track::new(
             self.spinning.rotation.clone(),
             setup.ratio.turns(),
@@ -372,20 +473,33 @@ impl Planner<'_> {
                 };
                 let last = turning.instant(stretch.section, stretch.first + stretch.count - 1);
                 let first = turning.instant(stretch.section, stretch.first);
-                let from = SamplePosition { index: first.index, fraction: first.fraction };
-                let to = SamplePosition { index: last.index, fraction: last.fraction };
+                let from = SamplePosition {
+                    index: first.index,
+                    fraction: first.fraction,
+                };
+                let to = SamplePosition {
+                    index: last.index,
+                    fraction: last.fraction,
+                };
                 let rate = self.recording.sample_rate_hz();
                 let revs = (to.since(from) / rate * speed).ceil() as u64 + 1;
                 let steady = Rotation::steady(rate, from, revs, speed);
                 all.push(Some((sections.len(), from, to)));
                 sections.extend(steady.sections);
             }
-            let mut rotation = Rotation::steady(self.recording.sample_rate_hz(), SamplePosition::default(), 1, speed);
+            let mut rotation = Rotation::steady(
+                self.recording.sample_rate_hz(),
+                SamplePosition::default(),
+                1,
+                speed,
+            );
             rotation.sections = sections;
             let track = Track::new(Arc::new(rotation), 1, 1, setup.samples_per_rev);
             let stretches = all
                 .into_iter()
-                .map(|part| part.and_then(|(section, from, to)| track.stretch(section, from, to, limits)))
+                .map(|part| {
+                    part.and_then(|(section, from, to)| track.stretch(section, from, to, limits))
+                })
                 .collect();
             (track, stretches)
         } else {
@@ -416,10 +530,19 @@ impl Planner<'_> {
             .collect()
     }
 
-    fn consume(&mut self, track: usize, setup: &Setup, feed: Feed, blocks: Vec<u64>) -> Result<Place, Error> {
+    fn consume(
+        &mut self,
+        track: usize,
+        setup: &Setup,
+        feed: Feed,
+        blocks: Vec<u64>,
+    ) -> Result<Place, Error> {
         let (block, hop) = match &feed {
             Feed::Spectrum(plan) => (plan.config().block, plan.config().hop),
-            Feed::Synchronous => (setup.samples_per_rev as usize, setup.samples_per_rev as usize),
+            Feed::Synchronous => (
+                setup.samples_per_rev as usize,
+                setup.samples_per_rev as usize,
+            ),
         };
         if blocks.iter().sum::<u64>() == 0 {
             let revs = block as f64 / f64::from(setup.samples_per_rev);
@@ -430,7 +553,9 @@ impl Planner<'_> {
                 .map(|s| s.count as f64 / f64::from(setup.samples_per_rev))
                 .fold(0.0, f64::max);
             return Err(Error::Setting {
-                what: format!("a block needs {revs:.1} revolutions; the longest stretch that counts has {longest:.1}"),
+                what: format!(
+                    "a block needs {revs:.1} revolutions; the longest stretch that counts has {longest:.1}"
+                ),
                 hint: "a larger --order-step makes shorter blocks".to_owned(),
             });
         }
@@ -439,14 +564,26 @@ impl Planner<'_> {
             .slots
             .iter()
             .map(|slot| {
-                work.slots.iter().position(|s| s == slot).unwrap_or_else(|| {
-                    work.slots.push(*slot);
-                    work.slots.len() - 1
-                })
+                work.slots
+                    .iter()
+                    .position(|s| s == slot)
+                    .unwrap_or_else(|| {
+                        work.slots.push(*slot);
+                        work.slots.len() - 1
+                    })
             })
             .collect();
-        work.consumers.push(Consumer { feed, slots, block, hop, blocks });
-        Ok(Place { track, consumer: work.consumers.len() - 1 })
+        work.consumers.push(Consumer {
+            feed,
+            slots,
+            block,
+            hop,
+            blocks,
+        });
+        Ok(Place {
+            track,
+            consumer: work.consumers.len() - 1,
+        })
     }
 
     fn averages_plan(
@@ -481,11 +618,19 @@ impl Planner<'_> {
             reachable_order: setup.reachable_order,
             corner_order: setup.corner_order,
         };
-        let angle_sigma_rev =
-            if steady { 0.0 } else { self.spinning.rotation.angle_sigma_deg() / 360.0 * ratio };
+        let angle_sigma_rev = if steady {
+            0.0
+        } else {
+            self.spinning.rotation.angle_sigma_deg() / 360.0 * ratio
+        };
         AveragesPlan {
             channels: std::mem::take(&mut setup.channels),
             detectors: std::mem::take(&mut setup.detectors),
+            powers: setup
+                .slots
+                .iter()
+                .map(|slot| slot.conversion.map_or(0, |c| c.power))
+                .collect(),
             facts,
             max_order: setup.max_order,
             spectrum,
@@ -520,7 +665,9 @@ fn spectrum_plan(
     // 2^26 samples to a block are 8 GiB of work space for 16 channels: no analysis.
     if !(2.0..=67_108_864.0).contains(&block) {
         return Err(Error::Setting {
-            what: format!("blocks of {block} samples (order step {order_step}, {per_rev} samples per revolution), expected 2 to 67108864"),
+            what: format!(
+                "blocks of {block} samples (order step {order_step}, {per_rev} samples per revolution), expected 2 to 67108864"
+            ),
             hint: "choose another --order-step or --max-order".to_owned(),
         });
     }
@@ -535,8 +682,10 @@ fn spectrum_plan(
         lines: lines.min(block as usize / 2 + 1),
         average,
     };
-    let plan = SpectrumPlan::new(config)
-        .map_err(|e| Error::Setting { what: e.to_string(), hint: "choose another --order-step".to_owned() })?;
+    let plan = SpectrumPlan::new(config).map_err(|e| Error::Setting {
+        what: e.to_string(),
+        hint: "choose another --order-step".to_owned(),
+    })?;
     Ok(Arc::new(plan))
 }
 
@@ -568,7 +717,9 @@ fn shown_quantity(
     shown: Option<ShownAs>,
     name: &str,
 ) -> Result<(Quantity, i32), Error> {
-    let Some(shown) = shown else { return Ok((recorded, 0)) };
+    let Some(shown) = shown else {
+        return Ok((recorded, 0));
+    };
     let target = match shown {
         ShownAs::Acceleration => Quantity::Acceleration,
         ShownAs::Velocity => Quantity::Velocity,
@@ -583,8 +734,13 @@ fn shown_quantity(
     match (derivatives(target), derivatives(recorded)) {
         (Some(to), Some(from)) => Ok((target, to - from)),
         _ => Err(Error::Setting {
-            what: format!("channel '{name}' measures {} and cannot be shown as {}", recorded.name(), target.name()),
-            hint: "give the channel's quantity and unit in the run file, or leave --as out".to_owned(),
+            what: format!(
+                "channel '{name}' measures {} and cannot be shown as {}",
+                recorded.name(),
+                target.name()
+            ),
+            hint: "give the channel's quantity and unit in the run file, or leave --as out"
+                .to_owned(),
         }),
     }
 }
@@ -593,24 +749,37 @@ fn shown_quantity(
 pub(crate) fn channel(recording: &Recording, pick: &ChannelPick) -> Result<usize, Error> {
     let channels = recording.channels();
     let found: Vec<usize> = match pick {
-        ChannelPick::Number(number) => {
-            (0..channels.len()).filter(|i| channels[*i].number == *number as usize).collect()
-        }
-        ChannelPick::Name(name) => (0..channels.len()).filter(|i| channels[*i].name == *name).collect(),
+        ChannelPick::Number(number) => (0..channels.len())
+            .filter(|i| channels[*i].number == *number as usize)
+            .collect(),
+        ChannelPick::Name(name) => (0..channels.len())
+            .filter(|i| channels[*i].name == *name)
+            .collect(),
     };
     let names = || {
-        let list: Vec<String> =
-            channels.iter().take(20).map(|c| format!("{} {}", c.number, c.name)).collect();
+        let list: Vec<String> = channels
+            .iter()
+            .take(20)
+            .map(|c| format!("{} {}", c.number, c.name))
+            .collect();
         list.join(", ")
     };
     match found.as_slice() {
         [one] => Ok(*one),
         [] => Err(Error::Setting {
-            what: format!("no channel '{pick}' in {}; it holds: {}", recording.name(), names()),
+            what: format!(
+                "no channel '{pick}' in {}; it holds: {}",
+                recording.name(),
+                names()
+            ),
             hint: "pick a channel by its number or its exact name".to_owned(),
         }),
         _ => Err(Error::Setting {
-            what: format!("{} channels are called '{pick}' in {}", found.len(), recording.name()),
+            what: format!(
+                "{} channels are called '{pick}' in {}",
+                found.len(),
+                recording.name()
+            ),
             hint: "pick it by its number".to_owned(),
         }),
     }

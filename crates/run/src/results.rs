@@ -386,7 +386,7 @@ pub struct RunResult {
     pub speed: SpeedResult,
     /// One for each analysis asked for, in order, with its settings as done (defaults filled in).
     pub analyses: Vec<Outcome>,
-    /// What must be said beside the results.
+    /// What must be said beside all results; each outcome adds its own.
     pub warnings: Vec<String>,
     /// Instruction set of the inner loops; results agree to 1e-12 between sets.
     pub cpu_level: &'static str,

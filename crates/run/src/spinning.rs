@@ -41,7 +41,10 @@ impl Spinning {
                 })
                 .collect();
             return Err(Error::Setting {
-                what: format!("the selection leaves nothing; the pulses cover {}", spans.join(", ")),
+                what: format!(
+                    "the selection leaves nothing; the pulses cover {}",
+                    spans.join(", ")
+                ),
                 hint: "check --from, --to and --exclude".to_owned(),
             });
         }
@@ -64,7 +67,13 @@ impl Spinning {
             }
         }
         let mean = revs * rotation.sample_rate_hz / samples;
-        Ok(Self { min: min.min(mean), mean, max: max.max(mean), rotation, windows })
+        Ok(Self {
+            min: min.min(mean),
+            mean,
+            max: max.max(mean),
+            rotation,
+            windows,
+        })
     }
 
     /// Speed range in rpm of a shaft that turns `ratio` times as fast.
@@ -94,11 +103,19 @@ fn windows(rotation: &Rotation, select: &Selection) -> Vec<Window> {
         {
             to = at(s);
         }
-        let mut gaps: Vec<_> = select.exclude.iter().map(|e| (at(e.from_s), at(e.to_s))).collect();
+        let mut gaps: Vec<_> = select
+            .exclude
+            .iter()
+            .map(|e| (at(e.from_s), at(e.to_s)))
+            .collect();
         gaps.sort_by(|a, b| a.partial_cmp(b).unwrap_or(std::cmp::Ordering::Equal));
         for (start, end) in gaps {
             if start > from && start < to {
-                found.push(Window { section, from, to: start });
+                found.push(Window {
+                    section,
+                    from,
+                    to: start,
+                });
             }
             if end > from {
                 from = end;

@@ -42,12 +42,20 @@ pub(crate) fn for_each_in_order<S, T: Send, E: Send>(
                     if chunk >= count {
                         return;
                     }
-                    let mut done = folded.0.lock().unwrap_or_else(std::sync::PoisonError::into_inner);
+                    let mut done = folded
+                        .0
+                        .lock()
+                        .unwrap_or_else(std::sync::PoisonError::into_inner);
                     while chunk >= *done + 2 * threads && !stop.load(Ordering::Relaxed) {
-                        done = folded.1.wait(done).unwrap_or_else(std::sync::PoisonError::into_inner);
+                        done = folded
+                            .1
+                            .wait(done)
+                            .unwrap_or_else(std::sync::PoisonError::into_inner);
                     }
                     drop(done);
-                    if stop.load(Ordering::Relaxed) || sender.send((chunk, work(chunk, &mut space))).is_err() {
+                    if stop.load(Ordering::Relaxed)
+                        || sender.send((chunk, work(chunk, &mut space))).is_err()
+                    {
                         return;
                     }
                 }
@@ -72,7 +80,10 @@ pub(crate) fn for_each_in_order<S, T: Send, E: Send>(
             if !go_on {
                 stop.store(true, Ordering::Relaxed);
             }
-            *folded.0.lock().unwrap_or_else(std::sync::PoisonError::into_inner) = expected;
+            *folded
+                .0
+                .lock()
+                .unwrap_or_else(std::sync::PoisonError::into_inner) = expected;
             folded.1.notify_all();
         }
     });
@@ -91,7 +102,9 @@ mod tests {
             || (),
             |chunk, ()| {
                 // Later chunks finish first.
-                std::thread::sleep(std::time::Duration::from_micros(((50 - chunk) % 7) as u64 * 100));
+                std::thread::sleep(std::time::Duration::from_micros(
+                    ((50 - chunk) % 7) as u64 * 100,
+                ));
                 Ok::<_, ()>(chunk * chunk)
             },
             |chunk, value| {

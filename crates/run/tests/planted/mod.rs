@@ -3,8 +3,8 @@
 
 use shaftwise_recording::{FloatWidth, WavConfig, WavWriter};
 use shaftwise_run::{
-    Analysis, AnalysisResult, CompareResult, Control, Job, RecordingSettings, RunResult, Selection, SpectrumResult,
-    SynchronousResult, TachSettings, execute,
+    Analysis, AnalysisResult, CompareResult, Control, Job, RecordingSettings, RunResult, Selection,
+    SpectrumResult, SynchronousResult, TachSettings, execute,
 };
 use shaftwise_synth::{Channel, Noise, Order, Recipe, Synth, Tone};
 use std::path::Path;
@@ -24,7 +24,13 @@ pub fn write(dir: &Path, recipe: &Recipe) {
     writer.write_planar(&rendered.channels).unwrap();
     writer.finish().unwrap();
     let mut times = String::new();
-    for time in rendered.truth.tachs.first().map(|t| t.times_s()).unwrap_or_default() {
+    for time in rendered
+        .truth
+        .tachs
+        .first()
+        .map(|t| t.times_s())
+        .unwrap_or_default()
+    {
         times.push_str(&format!("{time:.17}\n"));
     }
     std::fs::write(dir.join("times.txt"), times).unwrap();
@@ -32,8 +38,14 @@ pub fn write(dir: &Path, recipe: &Recipe) {
 
 pub fn job(dir: &Path, analyses: Vec<Analysis>) -> Job {
     Job {
-        recording: RecordingSettings { file: "r.wav".to_owned(), ..Default::default() },
-        tach: TachSettings { times: Some("times.txt".to_owned()), ..Default::default() },
+        recording: RecordingSettings {
+            file: "r.wav".to_owned(),
+            ..Default::default()
+        },
+        tach: TachSettings {
+            times: Some("times.txt".to_owned()),
+            ..Default::default()
+        },
         select: Selection::default(),
         analyses,
         base: dir.to_owned(),
@@ -42,14 +54,27 @@ pub fn job(dir: &Path, analyses: Vec<Analysis>) -> Job {
 }
 
 pub fn run(job: &Job) -> RunResult {
-    execute(job, &Control { progress: &|_| {}, cancel: &AtomicBool::new(false) }).unwrap()
+    execute(
+        job,
+        &Control {
+            progress: &|_| {},
+            cancel: &AtomicBool::new(false),
+        },
+    )
+    .unwrap()
 }
 
 pub fn spectrum(result: &RunResult) -> &SpectrumResult {
     result
         .analyses
         .iter()
-        .find_map(|o| if let AnalysisResult::Spectrum(s) = &o.result { Some(s) } else { None })
+        .find_map(|o| {
+            if let AnalysisResult::Spectrum(s) = &o.result {
+                Some(s)
+            } else {
+                None
+            }
+        })
         .unwrap()
 }
 
@@ -57,7 +82,13 @@ pub fn synchronous(result: &RunResult) -> &SynchronousResult {
     result
         .analyses
         .iter()
-        .find_map(|o| if let AnalysisResult::Synchronous(s) = &o.result { Some(s) } else { None })
+        .find_map(|o| {
+            if let AnalysisResult::Synchronous(s) = &o.result {
+                Some(s)
+            } else {
+                None
+            }
+        })
         .unwrap()
 }
 
@@ -65,15 +96,28 @@ pub fn comparison(result: &RunResult) -> &CompareResult {
     result
         .analyses
         .iter()
-        .find_map(|o| if let AnalysisResult::Compare(s) = &o.result { Some(s) } else { None })
+        .find_map(|o| {
+            if let AnalysisResult::Compare(s) = &o.result {
+                Some(s)
+            } else {
+                None
+            }
+        })
         .unwrap()
 }
 
 pub fn sensor(name: &str, orders: &[(f64, f64, f64)], tones: &[(f64, f64)], noise: f64) -> Channel {
     Channel {
-        orders: orders.iter().map(|(k, a, p)| Order::new(*k, *a, *p)).collect(),
+        orders: orders
+            .iter()
+            .map(|(k, a, p)| Order::new(*k, *a, *p))
+            .collect(),
         tones: tones.iter().map(|(f, a)| Tone::new(*f, *a, 10.0)).collect(),
-        noise: if noise > 0.0 { vec![Noise::White { rms: noise }] } else { Vec::new() },
+        noise: if noise > 0.0 {
+            vec![Noise::White { rms: noise }]
+        } else {
+            Vec::new()
+        },
         ..Channel::new(name, "acceleration", "m/s²")
     }
 }
