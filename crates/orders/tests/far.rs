@@ -44,9 +44,9 @@ fn worst_error(hours: f64, order: f64) -> f64 {
     let from = instants[0].index - 200;
     let count = (instants.last().unwrap().index + 400 - from) as usize;
     synth.seek(from);
-    let mut samples = vec![Vec::new()];
+    let mut samples = [Vec::new()];
     while samples[0].len() < count {
-        let mut part = vec![Vec::new()];
+        let mut part = [Vec::new()];
         synth.next_block(65_536, &mut part);
         samples[0].append(&mut part[0]);
     }
