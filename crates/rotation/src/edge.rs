@@ -167,8 +167,15 @@ impl Crossing {
         }
         let kept = 1.0 / (2.0 * std::f64::consts::PI.sqrt() * sigma);
         let variance = self.noise * self.noise * kept / (slope * slope);
-        let straight = self.snippet.straight(offset, level, self.up).map_or(0.0, |at| at - offset);
-        Some(Timed { offset, straight, variance })
+        let straight = self
+            .snippet
+            .straight(offset, level, self.up)
+            .map_or(0.0, |at| at - offset);
+        Some(Timed {
+            offset,
+            straight,
+            variance,
+        })
     }
 }
 
@@ -180,7 +187,11 @@ impl Snippet {
         (first..=last)
             .filter_map(|at| {
                 let (a, b) = (self.samples[at], self.samples[at + 1]);
-                let crosses = if up { a < level && level <= b } else { a > level && level >= b };
+                let crosses = if up {
+                    a < level && level <= b
+                } else {
+                    a > level && level >= b
+                };
                 crosses.then(|| at as f64 + (level - a) / (b - a))
             })
             .min_by(|a, b| (a - tau).abs().total_cmp(&(b - tau).abs()))

@@ -77,7 +77,14 @@ impl State {
         let a = (0.3 * v * v).powi(2);
         Self {
             x: [0.0, v, 0.0],
-            p: [r, r * v, 0.0, 2.0 * r * v * v + 0.25 * a * dt * dt, 0.5 * a * dt, a],
+            p: [
+                r,
+                r * v,
+                0.0,
+                2.0 * r * v * v + 0.25 * a * dt * dt,
+                0.5 * a * dt,
+                a,
+            ],
         }
     }
 
@@ -116,7 +123,11 @@ impl State {
         let [p00, p01, p02, p11, p12, p22] = self.p;
         let (k0, k1, k2) = (p00 / s, p01 / s, p02 / s);
         Self {
-            x: [self.x[0] + k0 * nu - step, self.x[1] + k1 * nu, self.x[2] + k2 * nu],
+            x: [
+                self.x[0] + k0 * nu - step,
+                self.x[1] + k1 * nu,
+                self.x[2] + k2 * nu,
+            ],
             p: [
                 p00 - k0 * p00,
                 p01 - k0 * p01,
@@ -134,10 +145,23 @@ struct Hypothesis {
     score: f64,
     state: State,
     tooth: i64,
+    /// Teeth that gave a pulse.
+    seen: usize,
     /// Pulse of the last tooth, and its time.
     pulse: usize,
     time: f64,
     node: usize,
+}
+
+impl Hypothesis {
+    /// Whether too much has been missed since the last tooth to tell where the shaft stands.
+    fn is_lost(&self, time: f64, traits: &Traits) -> bool {
+        let missed = self.state.x[1] * (time - self.time);
+        self.seen >= LEAST_PULSES
+            && missed > MOST_MISSING as f64
+            && (missed > MOST_STEP as f64
+                || self.state.predict(time - self.time, traits).p[0] > 1.0)
+    }
 }
 
 /// A label in the tree of hypotheses.
@@ -162,8 +186,11 @@ struct Labels {
 
 /// Labels `times[first..last]`.
 fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
-    let (ln_stray, ln_missing, ln_seen) =
-        (traits.strays.ln(), traits.missing.ln(), (1.0 - traits.missing).ln());
+    let (ln_stray, ln_missing, ln_seen) = (
+        traits.strays.ln(),
+        traits.missing.ln(),
+        (1.0 - traits.missing).ln(),
+    );
     let mut beam: Vec<Hypothesis> = Vec::new();
     let mut next: Vec<Hypothesis> = Vec::new();
     let mut nodes: Vec<Node> = Vec::new();
@@ -171,9 +198,19 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
     let mut decided = first;
     for pulse in first..last {
         let time = times[pulse];
+        if beam
+            .first()
+            .is_some_and(|leader| leader.is_lost(time, traits))
+        {
+            labels.broken_at = Some(beam[0].pulse + 1);
+            break;
+        }
         next.clear();
         for h in &beam {
-            next.push(Hypothesis { score: h.score + ln_stray, ..*h });
+            next.push(Hypothesis {
+                score: h.score + ln_stray,
+                ..*h
+            });
             let predicted = h.state.predict(time - h.time, traits);
             let s = predicted.innovation_variance(traits);
             let v = predicted.x[1];
@@ -189,11 +226,16 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
                     - 0.5 * (std::f64::consts::TAU * s).ln()
                     - 0.5 * nu * nu / s;
                 let tooth = h.tooth + step;
-                nodes.push(Node { parent: h.node, pulse, tooth });
+                nodes.push(Node {
+                    parent: h.node,
+                    pulse,
+                    tooth,
+                });
                 next.push(Hypothesis {
                     score: h.score + gain,
                     state: predicted.update(step as f64, s),
                     tooth,
+                    seen: h.seen + 1,
                     pulse,
                     time,
                     node: nodes.len() - 1,
@@ -206,12 +248,21 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
             let strays = (pulse - first - 1) as f64 * ln_stray;
             // Two teeth, any speed within a factor of e^10.
             let score = strays + 2.0 * ln_seen - 2.0 * dt.ln() - 10f64.ln();
-            nodes.push(Node { parent: ROOT, pulse: start, tooth: 0 });
-            nodes.push(Node { parent: nodes.len() - 1, pulse, tooth: 1 });
+            nodes.push(Node {
+                parent: ROOT,
+                pulse: start,
+                tooth: 0,
+            });
+            nodes.push(Node {
+                parent: nodes.len() - 1,
+                pulse,
+                tooth: 1,
+            });
             next.push(Hypothesis {
                 score,
                 state: State::between(dt, traits),
                 tooth: 1,
+                seen: 2,
                 pulse,
                 time,
                 node: nodes.len() - 1,
@@ -223,10 +274,16 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
             h.score + overdue * ln_missing
         };
         next.sort_by(|a, b| rank(b).total_cmp(&rank(a)));
+        // Where a train may start, there is more to choose from.
+        let room = if pulse < first + 3 * STARTS {
+            4 * BEAM
+        } else {
+            BEAM
+        };
         beam.clear();
         let best = next.first().map_or(0.0, rank);
         for h in &next {
-            if beam.len() >= BEAM || rank(h) < best - PRUNE {
+            if beam.len() >= room || rank(h) < best - PRUNE {
                 break;
             }
             let double = beam.iter().any(|other| {
@@ -237,12 +294,7 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
                 beam.push(*h);
             }
         }
-        let Some(leader) = beam.first().copied() else { continue };
-        if leader.state.x[1] * (time - leader.time) > MOST_STEP as f64 {
-            labels.broken_at = Some(leader.pulse + 1);
-            break;
-        }
-        if pulse - decided >= DECIDE {
+        if pulse - decided >= DECIDE && !beam.is_empty() {
             decide(&mut beam, &mut nodes, pulse - LAG, &mut labels.teeth);
             decided = pulse;
         }
@@ -302,13 +354,21 @@ fn decide(
     let mut kept = Vec::new();
     for (index, node) in nodes.iter().enumerate() {
         if needed[index] {
-            let parent = if node.parent == settled { ROOT } else { place[node.parent] };
+            let parent = if node.parent == settled {
+                ROOT
+            } else {
+                place[node.parent]
+            };
             place[index] = kept.len();
             kept.push(Node { parent, ..*node });
         }
     }
     for h in beam.iter_mut() {
-        h.node = if h.node == settled { ROOT } else { place[h.node] };
+        h.node = if h.node == settled {
+            ROOT
+        } else {
+            place[h.node]
+        };
     }
     *nodes = kept;
 }
@@ -320,10 +380,15 @@ pub(crate) fn number(
     sigma: f64,
     sample_rate_hz: f64,
 ) -> Numbering {
-    let mut intervals: Vec<f64> =
-        positions.windows(2).map(|pair| pair[1].since(pair[0])).collect();
+    let mut intervals: Vec<f64> = positions
+        .windows(2)
+        .map(|pair| pair[1].since(pair[0]))
+        .collect();
     let unit = median_in_place(&mut intervals).max(1e-9);
-    let times: Vec<f64> = positions.iter().map(|p| p.since(positions[0]) / unit).collect();
+    let times: Vec<f64> = positions
+        .iter()
+        .map(|p| p.since(positions[0]) / unit)
+        .collect();
     let traits = learn(&times, pulses_per_rev, sigma / unit);
 
     let mut out = Numbering::default();
@@ -332,7 +397,14 @@ pub(crate) fn number(
     let mut first = 0;
     while first < times.len() {
         let labels = label(&times, first, times.len(), &traits);
-        let Some(&(start, start_tooth)) = labels.teeth.first() else { break };
+        if labels.teeth.len() < LEAST_PULSES && labels.broken_at.is_none() {
+            // No train begins among these pulses.
+            first += STARTS;
+            continue;
+        }
+        let Some(&(start, start_tooth)) = labels.teeth.first() else {
+            break;
+        };
         if let Some(previous) = out.stretches.last().and_then(|s: &Vec<Pulse>| s.last()) {
             // Best guess over a break nobody can count: the mean of the speeds on both sides.
             let (a, b) = (previous.position, positions[start]);
@@ -346,7 +418,11 @@ pub(crate) fn number(
         let mut stretch: Vec<Pulse> = Vec::new();
         for (i, &(pulse, label)) in labels.teeth.iter().enumerate() {
             let position = positions[pulse];
-            let this = Pulse { tooth: tooth + label - start_tooth, position, used: true };
+            let this = Pulse {
+                tooth: tooth + label - start_tooth,
+                position,
+                used: true,
+            };
             if let Some(last) = stretch.last() {
                 let missing = this.tooth - last.tooth - 1;
                 let doubt = if missing > 0 {
@@ -421,7 +497,10 @@ fn guess_teeth(
         speeds.push(speed(b.tooth - a.tooth, a.position, b.position));
     }
     if labels.teeth.len() > 1 {
-        let (a, b) = (labels.teeth[0], labels.teeth[(labels.teeth.len() - 1).min(7)]);
+        let (a, b) = (
+            labels.teeth[0],
+            labels.teeth[(labels.teeth.len() - 1).min(7)],
+        );
         speeds.push(speed(b.1 - a.1, positions[a.0], positions[b.0]));
     }
     let mean = speeds.iter().sum::<f64>() / speeds.len().max(1) as f64;
@@ -452,7 +531,10 @@ fn doubt(times: &[f64], teeth: &[(usize, i64)], i: usize, traits: &Traits) -> Op
     let left = filtered((i.saturating_sub(SIDE)..i).map(at), traits);
     // The other side with time and angle running backwards.
     let right = filtered(
-        (i..(i + SIDE).min(teeth.len())).rev().map(at).map(|(t, n)| (-t, -n)),
+        (i..(i + SIDE).min(teeth.len()))
+            .rev()
+            .map(at)
+            .map(|(t, n)| (-t, -n)),
         traits,
     );
     let (Some(left), Some(right)) = (left, right) else {
@@ -468,7 +550,14 @@ fn doubt(times: &[f64], teeth: &[(usize, i64)], i: usize, traits: &Traits) -> Op
         -right.x[2] - left.x[2],
     ];
     let (l, r) = (left.p, right.p);
-    let c = [l[0] + r[0], l[1] - r[1], l[2] + r[2], l[3] + r[3], l[4] - r[4], l[5] + r[5]];
+    let c = [
+        l[0] + r[0],
+        l[1] - r[1],
+        l[2] + r[2],
+        l[3] + r[3],
+        l[4] - r[4],
+        l[5] + r[5],
+    ];
     // The step is what angle differs by once speed and acceleration are made to agree:
     // regression of d0 on (d1, d2).
     let det = c[3] * c[5] - c[4] * c[4];
@@ -476,13 +565,38 @@ fn doubt(times: &[f64], teeth: &[(usize, i64)], i: usize, traits: &Traits) -> Op
     let b2 = (c[2] * c[3] - c[1] * c[4]) / det;
     let step = d[0] - b1 * d[1] - b2 * d[2];
     let sigma = (c[0] - b1 * c[1] - b2 * c[2]).max(0.0).sqrt();
-    if !(sigma <= SURE) {
-        Some(format!("their number uncertain by {sigma:.2}"))
-    } else if step.abs() > 0.35 {
-        Some(format!("their number {step:+.2} off a whole one"))
-    } else {
-        None
+    if sigma <= SURE && step.abs() <= 0.35 {
+        return None;
     }
+    if only_count(times, teeth, i) {
+        return None;
+    }
+    Some(if sigma > SURE || sigma.is_nan() {
+        format!("their number uncertain by {sigma:.2}")
+    } else {
+        format!("their number {step:+.2} off a whole one")
+    })
+}
+
+/// Whether the speeds seen around the gap before label `i`, and a quarter of their spread beyond, leave
+/// one number of teeth only. Decides where speed swings within few teeth: a white jerk then
+/// makes the filter more timid than the train is wild.
+fn only_count(times: &[f64], teeth: &[(usize, i64)], i: usize) -> bool {
+    const SIDE: usize = 12;
+    let near = &teeth[i.saturating_sub(SIDE)..(i + SIDE).min(teeth.len())];
+    let (mut slowest, mut fastest, mut count) = (f64::INFINITY, 0f64, 0);
+    for pair in near.windows(2).filter(|pair| pair[1].1 - pair[0].1 == 1) {
+        let speed = 1.0 / (times[pair[1].0] - times[pair[0].0]);
+        (slowest, fastest, count) = (slowest.min(speed), fastest.max(speed), count + 1);
+    }
+    let gap = times[teeth[i].0] - times[teeth[i - 1].0];
+    let spread = fastest - slowest;
+    let (least, most) = (
+        gap * (slowest - 0.25 * spread),
+        gap * (fastest + 0.25 * spread),
+    );
+    let step = (teeth[i].1 - teeth[i - 1].1) as f64;
+    count >= SIDE / 2 && least > step - 0.6 && most < step + 0.6
 }
 
 /// p, λ and q from three stretches of the train: q by likelihood over a grid of decades, then
@@ -493,7 +607,9 @@ fn learn(times: &[f64], pulses_per_rev: u32, sigma: f64) -> Traits {
     let stretches: Vec<(usize, usize)> = if n <= 3 * STRETCH {
         vec![(0, n)]
     } else {
-        [0, (n - STRETCH) / 2, n - STRETCH].map(|first| (first, first + STRETCH)).to_vec()
+        [0, (n - STRETCH) / 2, n - STRETCH]
+            .map(|first| (first, first + STRETCH))
+            .to_vec()
     };
     // Marks of a wheel or a tape stand where they should to a hundredth of their pitch; a
     // single mark does exactly, but its edge is not better than this in practice.
@@ -509,8 +625,10 @@ fn learn(times: &[f64], pulses_per_rev: u32, sigma: f64) -> Traits {
     let mut jerk = traits.jerk;
     for exponent in [-10, -8, -6, -5, -4, -3, -2, -1] {
         traits.jerk = 10f64.powi(exponent);
-        let score: f64 =
-            stretches.iter().map(|&(a, b)| label(times, a, b, &traits).score).sum();
+        let score: f64 = stretches
+            .iter()
+            .map(|&(a, b)| label(times, a, b, &traits).score)
+            .sum();
         if score > best {
             (best, jerk) = (score, traits.jerk);
         }

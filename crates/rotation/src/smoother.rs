@@ -189,6 +189,25 @@ impl Train<'_> {
         self.log_speed = speeds;
     }
 
+    /// Median size of the fifth differences of the pulses' positions around a pulse, in
+    /// samples: what no neighbour can foretell. None with fewer than four of them.
+    fn bend(&self, index: usize) -> Option<f64> {
+        const SIDE: usize = 24;
+        let near =
+            &self.pulses[index.saturating_sub(SIDE)..(index + SIDE + 1).min(self.pulses.len())];
+        let mut sizes: Vec<f64> = near
+            .windows(6)
+            .filter(|six| six[5].tooth - six[0].tooth == 5 && six.iter().all(|p| p.used))
+            .map(|six| {
+                let at = six
+                    .iter()
+                    .map(|pulse| pulse.position.since(six[0].position));
+                at.zip(DIFFERENCE).map(|(t, d)| t * d).sum::<f64>().abs()
+            })
+            .collect();
+        (sizes.len() >= 4).then(|| median_in_place(&mut sizes))
+    }
+
     fn row_stiffness(&self, row: usize, smoothing: &Smoothing) -> f64 {
         // Row k takes coefficients k … k + 5, centred on knots k − 2 … k + 3.
         let factor = match self.log_speed.get(row) {
@@ -670,10 +689,10 @@ fn outliers(
     floor: f64,
 ) -> Vec<(usize, usize, f64)> {
     const NEIGHBOURS: usize = 24;
-    /// Below this share of a revolution (0.004 deg) no instant is worth a repair.
-    const LEAST_REV: f64 = 1e-5;
+    /// Below this share of a revolution (0.01 deg) no instant is worth a repair.
+    const LEAST_REV: f64 = 3e-5;
     const LEAST_AT_ENDS_REV: f64 = 0.02;
-    const ENDS: usize = 5;
+    const ENDS: usize = 4;
     let whole = robust_sigma(residuals.iter().flatten().map(Residual::studentised)).max(floor);
     let mut found = Vec::new();
     for (number, (train, residuals)) in trains.iter().zip(residuals).enumerate() {
@@ -694,17 +713,139 @@ fn outliers(
             );
             let per_rev = b.position.since(a.position) / (b.tooth - a.tooth) as f64
                 * train.grid.pulses_per_rev as f64;
-            // The outermost pulses have neighbours on one side only: what they are held against
-            // is half an extrapolation.
-            let least = if position < ENDS || position + ENDS >= residuals.len() {
-                LEAST_AT_ENDS_REV
+            // Beside an end or a gap a pulse is held against what is half an extrapolation.
+            let end = position < ENDS || position + ENDS >= residuals.len();
+            let least = if end {
+                LEAST_AT_ENDS_REV * per_rev
+            } else if train.pulses[residuals[position + ENDS].pulse].tooth
+                - train.pulses[residuals[position - ENDS].pulse].tooth
+                > 2 * ENDS as i64
+            {
+                5.0 * train.bend(i).unwrap_or(LEAST_AT_ENDS_REV * per_rev)
             } else {
-                LEAST_REV
+                0.0
             };
-            if worst && size > 5.0 * local && off.abs() > least * per_rev {
+            if worst && size > 5.0 * local && off.abs() > least.max(LEAST_REV * per_rev) {
                 found.push((number, i, off));
             }
         }
     }
     found
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn train_of(grid: &Grid, pulses: &mut [Pulse], act: impl FnOnce(&Train<'_>)) {
+        let intervals = pulses.len() - 1;
+        act(&Train {
+            grid,
+            pulses,
+            first_tooth: 0,
+            intervals,
+            span_knots: intervals as f64,
+            log_speed: Vec::new(),
+        });
+    }
+
+    #[test]
+    fn windows_give_what_the_whole_gives() {
+        let mut pulses: Vec<Pulse> = (0..6000)
+            .map(|i| {
+                let t = f64::from(i);
+                let offset = 1024.0 * t + 300.0 * (0.02 * t).sin() + (t * 12.9898).sin();
+                Pulse {
+                    tooth: i64::from(i),
+                    position: SamplePosition::new(0, offset),
+                    used: true,
+                }
+            })
+            .collect();
+        let grid = Grid::new(1);
+        train_of(&grid, &mut pulses, |train| {
+            for lambda in [1e-6, 1.0, 1e5, 1e8] {
+                let smoothing = Smoothing {
+                    lambda,
+                    power: 0.0,
+                    sigma: 1.0,
+                };
+                let solve = |low, high| {
+                    let window = train.solve(low, high, &smoothing, BandedMatrix::default());
+                    window.expect("positive definite")
+                };
+                let whole = solve(0, train.intervals);
+                let (low, high) = (2700, 3300);
+                let (from, to) = train.guarded(low, high, &smoothing);
+                let part = solve(from, to);
+                for i in low..high {
+                    let place = |window: &Window| {
+                        let line = window.origin
+                            + i128::from(window.slope) * (i as i128 - 2 - window.low as i128);
+                        (line, window.solution[i - window.low])
+                    };
+                    let ((a, b), (c, d)) = (place(&whole), place(&part));
+                    let difference = (a - c) as f64 + (b - d);
+                    // 1e-15 of the position, which is 3e6 samples, twice rounded.
+                    assert!(difference.abs() < 6e-9, "{lambda:e} {i}: {difference:e}");
+                }
+            }
+        });
+    }
+
+    #[test]
+    fn guards_bound_what_a_pulse_does_far_away() {
+        let grid = Grid::new(1);
+        for exponent in -6..=10 {
+            let lambda = 10f64.powi(exponent);
+            let guard = guard_knots(lambda, 1.0);
+            let n = 2 * guard + 1;
+            // One pulse off by 1e6 samples in an even train.
+            let mut pulses: Vec<Pulse> = (0..n)
+                .map(|i| {
+                    let index = 1_000_000_000 + 1000 * i as u64 + 1_000_000 * u64::from(i == guard);
+                    let position = SamplePosition {
+                        index,
+                        fraction: 0.0,
+                    };
+                    Pulse {
+                        tooth: i as i64,
+                        position,
+                        used: true,
+                    }
+                })
+                .collect();
+            let smoothing = Smoothing {
+                lambda,
+                power: 0.0,
+                sigma: 1.0,
+            };
+            train_of(&grid, &mut pulses, |train| {
+                let window = train
+                    .solve(0, train.intervals, &smoothing, BandedMatrix::default())
+                    .expect("positive definite");
+                let size = |i: usize| window.solution[i].abs();
+                let at = |share: f64| {
+                    let from = guard + 2 + (share * guard as f64) as usize;
+                    (from..from + guard / 20).map(size).fold(0.0, f64::max)
+                };
+                // Rounding hides the last third; the first 60 % must have lost 60 % of the
+                // fifteen decades.
+                let lost = (at(0.0) / at(0.6)).log10();
+                assert!(lost > 0.6 * 15.0 - 1.0, "{lambda:e}: {lost} decades");
+            });
+        }
+    }
+
+    #[test]
+    fn a_limp_spline_has_equal_variances_and_a_stiff_one_the_known_ratios() {
+        let limp = sandwich_ratios(1e-9, 1.0);
+        assert!(limp.iter().all(|r| (r - 1.0).abs() < 1e-3), "{limp:?}");
+        // ∫(1 + x¹⁰)⁻²/∫(1 + x¹⁰)⁻¹ = 9/10, with x² before both 7/10.
+        let stiff = sandwich_ratios(1e9, 1.0);
+        assert!(
+            (stiff[0] - 0.9).abs() < 5e-3 && (stiff[1] - 0.7).abs() < 5e-3,
+            "{stiff:?}"
+        );
+    }
 }

@@ -118,14 +118,16 @@ impl Hysteresis {
                 smooth: false,
             };
         }
-        short.sort_unstable_by(f64::total_cmp);
-        long.sort_unstable_by(|a, b| b.total_cmp(a));
         let (low, high) = extremes(samples);
         // A pulse touches two to four blocks: one stray alone does not set the scale.
-        let pulse = long[3.min(long.len() - 1)].max(typical);
+        let fourth = 3.min(long.len() - 1);
+        let (_, pulse, _) = long.select_nth_unstable_by(fourth, |a, b| b.total_cmp(a));
+        let pulse = pulse.max(typical);
         // One in ten groups of 4 normal deviates has a range below 0.98 standard deviations; one
         // block in ten has no edge even where pulses follow each other closely.
-        let noise = (short[short.len() / 10] / 0.98).min(0.1 * pulse);
+        let tenth = short.len() / 10;
+        let (_, noise, _) = short.select_nth_unstable_by(tenth, f64::total_cmp);
+        let noise = (*noise / 0.98).min(0.1 * pulse);
         let converter = converter_step(samples, high - low);
         let smooth = pulse < 25.0 * noise;
         // White noise keeps 1/√(2√π·2) of itself.

@@ -167,7 +167,11 @@ impl Tach {
             };
             let shape = |x: f64| {
                 let x = x.clamp(-0.5, 0.5);
-                if self.round { 0.5 * (1.0 + (std::f64::consts::PI * x).sin()) } else { 0.5 + x }
+                if self.round {
+                    0.5 * (1.0 + (std::f64::consts::PI * x).sin())
+                } else {
+                    0.5 + x
+                }
             };
             let end = match self.width {
                 Length::Seconds(s) => t + s,
