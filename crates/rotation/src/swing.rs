@@ -17,6 +17,8 @@ pub(crate) struct Swing {
     pub(crate) noise: f64,
     /// Whether it takes smoothing to see it.
     pub(crate) noisy: bool,
+    /// Whether it was handed out before its end was known.
+    pub(crate) early: bool,
 }
 
 impl Swing {
@@ -135,7 +137,7 @@ impl Hysteresis {
         // A channel of two values is all step.
         let converter = converter.min(0.16 * (high - low));
         Self {
-            step: (9.0 * seen)
+            step: (10.0 * seen)
                 .max(0.1 * pulse)
                 .max(2.5 * converter)
                 .max(0.1 * typical),
@@ -270,7 +272,23 @@ impl Zigzag {
             to: from,
             noise: hysteresis.noise,
             noisy: hysteresis.smooth,
+            early: false,
         });
+    }
+
+    /// The swing under way, if it was confirmed before `known` and not handed out before: its
+    /// surroundings are complete, however long it may still go on.
+    pub(crate) fn early(&mut self, known: u64) -> Option<Swing> {
+        let (low, high) = (self.low, self.high);
+        let open = self.open.as_mut()?;
+        if open.early || open.confirmed >= known {
+            return None;
+        }
+        open.early = true;
+        Some(Swing {
+            to: if open.up { high } else { low },
+            ..*open
+        })
     }
 
     /// Ends the swing under way.

@@ -286,7 +286,9 @@ impl TachScanner {
             return;
         }
         let start = (self.seen - self.buffer_start) as usize;
-        let hysteresis = Hysteresis::of(&self.buffer[start..], self.typical);
+        // The swings held tell it too: a slow shaft takes long to have some judged.
+        let typical = self.typical.max(crate::swing::typical(&self.held));
+        let hysteresis = Hysteresis::of(&self.buffer[start..], typical);
         self.zigzag.run(
             &self.buffer,
             start,
@@ -308,13 +310,16 @@ impl TachScanner {
                 break;
             }
             let next = self.raw.get(1).map_or(end, |next| next.confirmed);
-            let before = self.held.back().map_or(0, |m| m.swing.confirmed);
-            let crossing = self.measure(&swing, before, next);
-            self.held.push_back(Measured { swing, crossing });
             self.raw.pop_front();
-            if self.held.len() >= 2 * HELD {
-                self.judge(HELD);
+            match self.held.back_mut() {
+                Some(measured) if swing.early => measured.swing.to = swing.to,
+                _ => self.hold(swing, next),
             }
+        }
+        if self.raw.is_empty()
+            && let Some(swing) = self.zigzag.early(known)
+        {
+            self.hold(swing, end);
         }
         if last {
             self.judge(usize::MAX);
@@ -324,6 +329,16 @@ impl TachScanner {
             let surplus = keep.saturating_sub(self.buffer_start) as usize;
             self.buffer.drain(..surplus);
             self.buffer_start += surplus as u64;
+        }
+    }
+
+    /// Measures a swing and holds it back until its neighbours are known.
+    fn hold(&mut self, swing: Swing, next: u64) {
+        let before = self.held.back().map_or(0, |m| m.swing.confirmed);
+        let crossing = self.measure(&swing, before, next);
+        self.held.push_back(Measured { swing, crossing });
+        if self.held.len() >= 2 * HELD {
+            self.judge(HELD);
         }
     }
 

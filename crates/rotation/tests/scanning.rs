@@ -331,6 +331,40 @@ fn pulses_of_a_wheel_are_found_one_by_one() {
 }
 
 #[test]
+fn a_slow_shaft_with_long_pulses_keeps_both_edges() {
+    // A pulse lasts three slabs.
+    let motion = Motion::steady(0.5);
+    let tach = Tach {
+        width: Length::Degrees(170.0),
+        noise: 0.02,
+        ..Tach::plain(204_800.0)
+    };
+    let instants = motion.instants(0.0, 1.0, 19.0);
+    let samples = tach.sample(&motion, &instants, 20.0);
+    for (edge, late) in [(Edge::Rising, 0.0), (Edge::Falling, 170.0 / 360.0 / 0.5)] {
+        let scan = scan(
+            &samples,
+            &TachConfig {
+                edge,
+                ..config(tach.rate)
+            },
+        )
+        .unwrap();
+        let planted: Vec<f64> = instants
+            .iter()
+            .map(|t| t + late)
+            .filter(|t| *t < 19.99)
+            .collect();
+        assert_eq!(scan.edges.len(), planted.len(), "{edge:?}");
+        for (found, truth) in scan.edges.iter().zip(planted) {
+            // A slope of 0.22 V a sample, 0.02 V of noise: 0.09 sample, less by smoothing.
+            let off = found.position.seconds(tach.rate) - truth;
+            assert!(off.abs() < 0.3 / tach.rate, "{edge:?} {truth} s: {off:e} s");
+        }
+    }
+}
+
+#[test]
 fn widths_and_levels_are_reported() {
     let motion = Motion::steady(40.0);
     let tach = Tach {
