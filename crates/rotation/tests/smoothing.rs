@@ -79,7 +79,7 @@ fn exact_times_give_the_motion_back() {
 
 #[test]
 fn stated_sigmas_cover_the_truth() {
-    // One standard deviation holds 68 %; the prototypes' bounds.
+    // One standard deviation holds 68 %; the bounds leave room for errors that hang together.
     let mut table = Vec::new();
     for (name, motion) in laws() {
         for noise in [0.003, 0.03, 0.3] {
