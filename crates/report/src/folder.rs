@@ -106,6 +106,18 @@ impl Prepared {
         &self.options.dir
     }
 
+    /// Writes a text of its own, such as a run file; returns the file.
+    ///
+    /// # Errors
+    ///
+    /// If the file cannot be written; then one of that name from before is untouched.
+    pub fn write_text(&self, name: &str, text: &str) -> Result<PathBuf, Error> {
+        let mut batch = Batch::new(&self.options.dir);
+        batch.stage(name, |sink| Ok(sink.write_all(text.as_bytes())?))?;
+        batch.commit()?;
+        Ok(self.options.dir.join(name))
+    }
+
     /// Writes one analysis: its figures, a CSV of every curve and `<command>.json`. Returns the
     /// files in the order they got their names.
     ///
