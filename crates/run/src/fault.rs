@@ -560,7 +560,7 @@ fn described(node: &Value) -> String {
 /// Small limits as the fractions they are.
 fn plain_number(value: f64) -> String {
     let inverse = 1.0 / value;
-    if value.abs() < 0.01 && inverse.is_finite() && inverse == inverse.round() {
+    if value > 0.0 && value < 0.01 && inverse.log2() == inverse.log2().round() {
         return format!("1/{inverse}");
     }
     value.to_string()

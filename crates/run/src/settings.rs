@@ -180,8 +180,8 @@ pub enum ShownAs {
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(default, deny_unknown_fields)]
 pub struct SpeedSettings {
-    /// Step of the curve in seconds. Range: above 0. Default: 0.02.
-    #[schemars(extend("exclusiveMinimum" = 0))]
+    /// Step of the curve in seconds. Range: 0.0001 and more. Default: 0.02.
+    #[schemars(range(min = 0.0001))]
     pub step: f64,
 }
 

@@ -305,7 +305,7 @@ const BROKEN: &[(&str, &str, &str, &str, &str)] = &[
         "step",
         "0.05",
         "0",
-        "`step` is 0; expected a number above 0",
+        "`step` is 0; expected a number, 0.0001 or more",
     ),
     (
         "spectrum",
