@@ -15,6 +15,7 @@ mod error;
 mod ledger;
 mod numbering;
 mod rotation;
+mod sampling;
 mod section;
 mod smoother;
 mod swing;

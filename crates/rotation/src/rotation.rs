@@ -1,8 +1,9 @@
 //! The rotation of a shaft: angle over time, with its uncertainty and its ledger.
 
 use crate::numbering::{self, Numbering};
+use crate::sampling;
 use crate::section::Motion;
-use crate::smoother;
+use crate::smoother::{self, Pulse, Smoothed};
 use crate::{Error, LedgerAction, LedgerEntry, Section, TachScan};
 use shaftwise_signal::SamplePosition;
 
@@ -56,6 +57,9 @@ pub struct Rotation {
     pub pulses: PulseCount,
     /// Standard deviation of a pulse's instant as found in the data, in seconds.
     pub timing_sigma_s: f64,
+    /// What was taken off the pulses for the sampling of their short edges, rms in seconds; 0 where
+    /// no such error was found.
+    pub sampling_error_s: f64,
     /// Pulses per revolution.
     pub pulses_per_rev: u32,
     /// Width of the timed edge (10 to 90 %) in degrees at the mean speed, where a channel was scanned.
@@ -111,7 +115,7 @@ pub fn rotation_from_times(times_s: &[f64], config: &RotationConfig) -> Result<R
             "{left_out} pulse times lie outside the recording and are left out"
         ));
     }
-    assemble(&positions, 0.0, config, warnings)
+    assemble(&positions, None, config, warnings)
 }
 
 /// The rotation behind the edges of a tach channel.
@@ -128,7 +132,7 @@ pub fn rotation_from_scan(scan: &TachScan, config: &RotationConfig) -> Result<Ro
         .filter(|position| position.index < config.total_samples)
         .collect();
     let edge_sigma = scan.edge_sigma_s * config.sample_rate_hz;
-    let mut rotation = assemble(&positions, edge_sigma, config, scan.warnings.clone())?;
+    let mut rotation = assemble(&positions, Some(edge_sigma), config, scan.warnings.clone())?;
     let degrees = 360.0 * rotation.mean_speed();
     rotation.edge_width_deg = Some(scan.edge_width_s * degrees);
     rotation.pulse_width_deg = Some(scan.pulse_width_s * degrees);
@@ -153,14 +157,44 @@ fn check(config: &RotationConfig) -> Result<(), Error> {
     Ok(())
 }
 
-/// `edge_sigma`: what is known of the edges' own timing noise, in samples.
+/// A section and its dropped pulses: index, distance from the motion in samples.
+fn section(
+    pulses: &[Pulse],
+    mut fit: Smoothed,
+    config: &RotationConfig,
+) -> (Section, Vec<(usize, f64)>) {
+    let per_rev = i64::from(config.pulses_per_rev);
+    for sigma in &mut fit.sigma {
+        // From 1/(samples per rev) to rev/s.
+        sigma[1] *= config.sample_rate_hz as f32;
+    }
+    let first = pulses[0].tooth;
+    let section = Section {
+        first_rev: first.div_euclid(per_rev),
+        first_fraction: first.rem_euclid(per_rev) as f64 / per_rev as f64,
+        span_knots: fit.span_knots,
+        knots_per_rev: fit.knots_per_rev,
+        sample_rate_hz: config.sample_rate_hz,
+        motion: Motion::Spline {
+            origin: fit.origin,
+            bits: fit.bits,
+            coefficients: fit.coefficients,
+            sigma: fit.sigma,
+        },
+    };
+    (section, fit.dropped)
+}
+
+/// `edge_sigma`: for edges of a sampled channel, what is known of their own timing noise, in samples.
 pub(crate) fn assemble(
     positions: &[SamplePosition],
-    edge_sigma: f64,
+    edge_sigma: Option<f64>,
     config: &RotationConfig,
     mut warnings: Vec<String>,
 ) -> Result<Rotation, Error> {
     let rate = config.sample_rate_hz;
+    let sampled = edge_sigma.is_some();
+    let edge_sigma = edge_sigma.unwrap_or(0.0);
     if positions.len() < LEAST_PULSES {
         return Err(Error::TooFewPulses {
             found: positions.len(),
@@ -181,30 +215,42 @@ pub(crate) fn assemble(
             least: LEAST_PULSES,
         });
     }
-    let (smoothing, fits) = smoother::smooth(&mut stretches, config.pulses_per_rev, edge_sigma)?;
+    let lay = |stretches: &mut [Vec<Pulse>]| -> Result<_, Error> {
+        let (smoothing, fits) = smoother::smooth(stretches, config.pulses_per_rev, edge_sigma)?;
+        let laid: Vec<_> = stretches
+            .iter()
+            .zip(fits)
+            .map(|(p, fit)| section(p, fit, config))
+            .collect();
+        Ok((smoothing, laid))
+    };
     let per_rev = i64::from(config.pulses_per_rev);
-    let mut sections = Vec::with_capacity(fits.len());
-    let mut inserted = 0;
-    for (pulses, mut fit) in stretches.into_iter().zip(fits) {
-        for sigma in &mut fit.sigma {
-            // From 1/(samples per rev) to rev/s.
-            sigma[1] *= rate as f32;
-        }
-        let first = pulses[0].tooth;
-        let section = Section {
-            first_rev: first.div_euclid(per_rev),
-            first_fraction: first.rem_euclid(per_rev) as f64 / per_rev as f64,
-            span_knots: fit.span_knots,
-            knots_per_rev: fit.knots_per_rev,
-            sample_rate_hz: rate,
-            motion: Motion::Spline {
-                origin: fit.origin,
-                bits: fit.bits,
-                coefficients: fit.coefficients,
-                sigma: fit.sigma,
-            },
+    let tooth_at = |section: &Section, tooth: i64| {
+        section.at(
+            tooth.div_euclid(per_rev),
+            tooth.rem_euclid(per_rev) as f64 / per_rev as f64,
+        )
+    };
+    let teeth = |stretches: &mut [Vec<Pulse>]| -> Result<_, Error> {
+        let (_, laid) = lay(stretches)?;
+        let of_section = |(pulses, (section, _)): (&Vec<Pulse>, &(Section, _))| {
+            pulses
+                .iter()
+                .map(|pulse| tooth_at(section, pulse.tooth).position)
+                .collect()
         };
-        for (index, off) in fit.dropped {
+        Ok(stretches.iter().zip(&laid).map(of_section).collect())
+    };
+    let sampling_error = if sampled {
+        sampling::correct(&mut stretches, teeth)?
+    } else {
+        0.0
+    };
+    let (smoothing, laid) = lay(&mut stretches)?;
+    let mut sections = Vec::with_capacity(laid.len());
+    let mut inserted = 0;
+    for (pulses, (section, dropped)) in stretches.into_iter().zip(laid) {
+        for (index, off) in dropped {
             let pulse = &pulses[index];
             let speed = section.speed_at(pulse.position);
             ledger.push(LedgerEntry {
@@ -220,10 +266,7 @@ pub(crate) fn assemble(
         for pair in pulses.windows(2) {
             for tooth in pair[0].tooth + 1..pair[1].tooth {
                 inserted += 1;
-                let instant = section.at(
-                    tooth.div_euclid(per_rev),
-                    tooth.rem_euclid(per_rev) as f64 / per_rev as f64,
-                );
+                let instant = tooth_at(&section, tooth);
                 ledger.push(LedgerEntry {
                     time_s: instant.position.seconds(rate),
                     action: LedgerAction::Inserted,
@@ -251,6 +294,7 @@ pub(crate) fn assemble(
             rejected,
         },
         timing_sigma_s: smoothing.sigma / rate,
+        sampling_error_s: sampling_error / rate,
         pulses_per_rev: config.pulses_per_rev,
         edge_width_deg: None,
         pulse_width_deg: None,
@@ -291,6 +335,7 @@ impl Rotation {
             ledger: Vec::new(),
             pulses: PulseCount::default(),
             timing_sigma_s: 0.0,
+            sampling_error_s: 0.0,
             pulses_per_rev: 1,
             edge_width_deg: None,
             pulse_width_deg: None,
@@ -405,7 +450,7 @@ mod tests {
             total_samples: u64::MAX,
             pulses_per_rev: 1,
         };
-        let made = assemble(&positions, 0.0, &config, Vec::new()).expect("a plain train");
+        let made = assemble(&positions, None, &config, Vec::new()).expect("a plain train");
         let steady = Rotation::steady(
             51_200.0,
             SamplePosition::default(),
@@ -451,7 +496,7 @@ mod tests {
             total_samples: u64::MAX,
             pulses_per_rev: 1,
         };
-        let rotation = assemble(&positions, 0.0, &config, Vec::new()).expect("a plain train");
+        let rotation = assemble(&positions, None, &config, Vec::new()).expect("a plain train");
         let Motion::Spline {
             coefficients,
             sigma,
