@@ -896,3 +896,46 @@ fn a_stretch_without_pulses_is_refused() {
         .run("spectrum small.wav --tach 3 --exclude 0:12")
         .exits(1);
 }
+
+#[test]
+fn two_hundred_channels_are_no_trouble() {
+    let folder = Folder::empty();
+    let row = |n: usize| {
+        // 10 rev/s: the tach is high for 20 of 100 samples
+        let tach = if n % 100 < 20 { "5" } else { "0" };
+        format!("{}{tach}\n", "0.5,".repeat(199))
+    };
+    folder.write("many.csv", (0..5000).map(row).collect::<String>());
+    let json = folder.run("speed many.csv --sample-rate 1000 --tach 200 --json");
+    let mean = json.json()["speed_rpm"]["mean"].as_f64().unwrap();
+    assert!((mean - 600.0).abs() < 1e-6, "{mean}");
+    folder
+        .run("speed many.csv --sample-rate 1000 --tach 201")
+        .fails(1, "201");
+}
+
+#[test]
+fn samples_that_are_no_numbers_are_shown_with_their_place() {
+    let folder = Folder::empty();
+    let row = |n: usize| {
+        let value = if n == 2000 { "nan" } else { "0.25" };
+        let tach = if n % 100 < 20 { 5 } else { 0 };
+        format!("{value},{tach}\n")
+    };
+    folder.write("gap.csv", (0..5000).map(row).collect::<String>());
+    folder
+        .run("spectrum gap.csv --sample-rate 1000 --tach 2")
+        .fails(1, "gap.csv: line 2001, column 1: found \"nan\"");
+}
+
+#[test]
+fn pulse_times_that_are_none_are_shown_with_their_line() {
+    let folder = Folder::with_recording();
+    folder.write("times.txt", "0.1\n0.2\nsoon\n");
+    folder
+        .run("speed small.wav --tach-times times.txt")
+        .fails(1, "times.txt:3:1");
+    folder
+        .run("speed small.wav --tach-times none.txt")
+        .fails(1, "none.txt");
+}
