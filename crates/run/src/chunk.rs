@@ -406,7 +406,7 @@ impl PassTwo<'_> {
             ),
             hint: format!(
                 "leave that stretch out, such as --exclude {:.2}:{:.2}=gap",
-                time - 0.5,
+                (time - 0.5).max(0.0),
                 time + 0.5
             ),
         }

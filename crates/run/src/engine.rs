@@ -66,11 +66,7 @@ pub fn execute(job: &Job, control: &Control<'_>) -> Result<RunResult, Error> {
 
     let plan = plan::plan(&recording, tach, &spinning, &job.analyses)?;
     let totals = pass_two(&recording, &plan, job.threads, control)?;
-    let step_s = job.analyses.iter().find_map(|analysis| match analysis {
-        Analysis::Speed(settings) => Some(settings.step),
-        _ => None,
-    });
-    let speed = outcome::speed(&spinning, step_s.unwrap_or(SpeedSettings::default().step));
+    let speed = outcome::speed(&spinning, curve_step(&job.analyses, &spinning)?);
     let analyses = outcome::outcomes(&spinning, &plan, &job.analyses, totals, &speed);
     let mut said = std::collections::HashSet::new();
     warnings.retain(|warning| said.insert(warning.clone()));
@@ -87,6 +83,31 @@ pub fn execute(job: &Job, control: &Control<'_>) -> Result<RunResult, Error> {
         warnings,
         cpu_level: InterpolationPlan::new().cpu_level(),
     })
+}
+
+/// Step of the speed curve in seconds: as asked for, else the default, wider where a very long recording
+/// would make the curve a burden.
+fn curve_step(analyses: &[Analysis], spinning: &Spinning) -> Result<f64, Error> {
+    /// Values in a curve at most: 160 MB in four columns of text.
+    const MOST: f64 = 2e6;
+    let asked = analyses.iter().find_map(|analysis| match analysis {
+        Analysis::Speed(settings) => Some(settings.step),
+        _ => None,
+    });
+    let seconds = spinning.rotation.seconds();
+    match asked {
+        Some(step) if seconds / step > MOST && step != SpeedSettings::default().step => {
+            Err(Error::Setting {
+                what: format!(
+                    "a step of {step} s over {seconds:.1} s gives more than {MOST:.0} values of speed"
+                ),
+                hint: format!("--step {:.3} or more", seconds / MOST),
+            })
+        }
+        asked => Ok(asked
+            .unwrap_or(SpeedSettings::default().step)
+            .max(seconds / MOST)),
+    }
 }
 
 fn tach_config(tach: &TachSettings, sample_rate_hz: f64) -> TachConfig {

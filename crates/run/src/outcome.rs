@@ -398,7 +398,6 @@ fn synchronous(
     SynchronousResult {
         blocks: plan.facts.clone(),
         channels,
-        files: Vec::new(),
     }
 }
 

@@ -294,8 +294,6 @@ pub struct SynchronousResult {
     pub blocks: BlockFacts,
     /// Channels.
     pub channels: Vec<SynchronousChannel>,
-    /// Files written beside, bare names.
-    pub files: Vec<String>,
 }
 
 /// A peak, smeared against tracked.

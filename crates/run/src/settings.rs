@@ -270,8 +270,6 @@ pub struct SynchronousSettings {
     /// The shaft analysed turns A per B revolutions of the tach's shaft, written "A/B". Default: the tach's shaft.
     #[schemars(extend("pattern" = RATIO_PATTERN))]
     pub ratio: Option<String>,
-    /// Write the residual, resampled to the mean speed, as a WAV. Default: no.
-    pub write_wav: bool,
 }
 
 /// Settings of `compare`.

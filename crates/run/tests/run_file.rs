@@ -73,8 +73,7 @@ const WHOLE: &str = r#"{
       "max_order": 30,
       "averages": 64,
       "as": "displacement",
-      "ratio": "3",
-      "write_wav": true
+      "ratio": "3"
     },
     {
       "command": "compare",
@@ -446,13 +445,6 @@ const BROKEN: &[(&str, &str, &str, &str, &str)] = &[
         "\"3\"",
         "3",
         "`ratio` is 3; expected a text",
-    ),
-    (
-        "synchronous",
-        "write_wav",
-        "true\n",
-        "\"yes\"\n",
-        "`write_wav` is \"yes\"; expected true or false",
     ),
     (
         "compare",
