@@ -1,6 +1,6 @@
 //! Halving the sample rate, again and again, before a coarse resampling.
 //!
-//! y[n] = ½ x[2n] + Σ_k c_k (x[2n+2k+1] + x[2n−2k−1]): a half-band low-pass with linear phase and no
+//! `y[n] = ½ x[2n] + Σ_k c_k (x[2n+2k+1] + x[2n−2k−1])`: a half-band low-pass with linear phase and no
 //! delay, so sample n of level l sits exactly at sample n·2^l of the recording. Passes up to
 //! 0.1525 of its input rate and stops from 0.3475, both within 134 dB; a kernel whose stop band
 //! starts below the former cannot tell which level it reads, so the level may change without a trace.

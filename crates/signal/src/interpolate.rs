@@ -1,6 +1,6 @@
 //! Interpolation at given instants, with a cut-off that follows the step between them.
 //!
-//! The value at position t (in samples) is Σ_j x[j] h(j − t), with the windowed sinc
+//! The value at position t (in samples) is `Σ_j x[j] h(j − t)`, with the windowed sinc
 //!
 //! h(d) ∝ sin(π s d)/d · W((s d / H)²),  s = min(1, 1/step)
 //!

@@ -223,7 +223,7 @@ fn dot_body<const FMA: bool>(weights: &[f64], samples: &[f64]) -> f64 {
     total
 }
 
-/// out[n] = ½ even[n + K] + Σ_{k<K} pairs[k] (odd[n+K+k] + odd[n+K−1−k]), K = pairs.len().
+/// `out[n] = ½ even[n + K] + Σ_{k<K} pairs[k] (odd[n+K+k] + odd[n+K−1−k])`, K = `pairs.len()`.
 #[inline(always)]
 fn half_band_body<const FMA: bool>(pairs: &[f64], even: &[f64], odd: &[f64], out: &mut [f64]) {
     let reach = pairs.len();

@@ -6,7 +6,7 @@
 //!
 //! * coherent gain CG = (1/N) Σ w
 //! * equivalent noise bandwidth ENBW = N Σ w² / (Σ w)², in lines
-//! * overlap correlation OC(h) = Σ w[n] w[n+h] / Σ w²
+//! * overlap correlation `OC(h) = Σ w[n] w[n+h] / Σ w²`
 
 use crate::Error;
 use std::f64::consts::PI;
