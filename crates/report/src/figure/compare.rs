@@ -79,10 +79,13 @@ pub(super) fn figure(compare: &CompareResult, channel: usize, scene: Scene<'_>) 
         role,
     };
     for peak in channel.peaks.iter().take(MOST_LABELS) {
+        // Orders that ran together share their highest line: one label says it.
         let at = peak.smeared_at_order;
-        smeared
-            .labels
-            .push(label(at, at, peak.smeared_rms, Role::Secondary));
+        if !smeared.labels.iter().any(|other| other.x == at) {
+            smeared
+                .labels
+                .push(label(at, at, peak.smeared_rms, Role::Secondary));
+        }
         let at = peak.order;
         tracked
             .labels
