@@ -54,6 +54,7 @@ pub(crate) fn speed(spinning: &Spinning, step_s: f64) -> SpeedResult {
         angle_sigma_deg: rotation.angle_sigma_deg(),
         highest_trusted_order: rotation.highest_trusted_order(),
         timing_sigma_s: rotation.timing_sigma_s,
+        sampling_error_s: rotation.sampling_error_s,
         edge_width_deg: rotation.edge_width_deg.unwrap_or(f64::NAN),
         pulse_width_deg: rotation.pulse_width_deg.unwrap_or(f64::NAN),
         sections_s: rotation

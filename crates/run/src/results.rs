@@ -98,6 +98,9 @@ pub struct SpeedResult {
     pub highest_trusted_order: f64,
     /// 1-sigma of the pulses' timing found in the data, seconds.
     pub timing_sigma_s: f64,
+    /// What sampling had done to the instants of short edges, learned from the pulses and taken off, rms
+    /// in seconds; 0 where nothing was.
+    pub sampling_error_s: f64,
     /// Width of the timed edge, degrees of the tach's shaft; null for a file of times.
     pub edge_width_deg: f64,
     /// Width of the pulse, degrees of the tach's shaft; null for a file of times.

@@ -33,6 +33,12 @@ pub(crate) fn speed_part(speed: &SpeedResult) -> Part {
             significant(1e6 * speed.timing_sigma_s, 2)
         ));
     }
+    if speed.sampling_error_s > 0.0 {
+        findings.push(format!(
+            "Sampling had moved the instants of its short edges by {} µs rms; that was learned from the pulses and taken off.",
+            significant(1e6 * speed.sampling_error_s, 2)
+        ));
+    }
     let pulses = &speed.pulses;
     findings.push(format!(
         "{} timed, {} used; ledger: {}.",
