@@ -37,11 +37,23 @@ fn test_signal(count: u64) -> Vec<f64> {
 fn averaged_spectra_are_those_of_scipy_welch() {
     let values = values();
     let x = test_signal(8192);
-    for (name, window, hop, lobe) in [
-        ("welch_hann_50", Window::Hann, 128, 2),
-        ("welch_blackmanharris_75", Window::BlackmanHarris, 64, 4),
-        ("welch_kaiser18_50", Window::Kaiser { beta: 18.0 }, 128, 8),
-        ("welch_hamming_0", Window::Hamming, 256, 2),
+    for (name, window, hop, lobe, skirt) in [
+        ("welch_hann_50", Window::Hann, 128, 2, 0.0),
+        (
+            "welch_blackmanharris_75",
+            Window::BlackmanHarris,
+            64,
+            4,
+            0.0,
+        ),
+        (
+            "welch_kaiser18_50",
+            Window::Kaiser { beta: 18.0 },
+            128,
+            8,
+            1e-5,
+        ),
+        ("welch_hamming_0", Window::Hamming, 256, 2, 0.0),
     ] {
         let config = SpectrumConfig {
             window,
@@ -68,10 +80,10 @@ fn averaged_spectra_are_those_of_scipy_welch() {
         // The weighted mean is taken off each block here and not there: the lines of its lobe differ.
         for line in lobe..129 {
             let miss = (ours[line] - theirs[line]).abs();
-            // Transforms of 256 points and sums of 125 blocks: 1e-13 of the largest is generous. Beyond
-            // its lobe Kaiser's window still passes 1e-7 of the mean's amplitude, crossed with the line.
+            // Transforms of 256 points and sums of 125 blocks: 1e-13 of the largest is generous. Beyond its
+            // lobe Kaiser's window still passes 3e-7 of the mean (0.49), crossed with lines of 0.02.
             assert!(
-                miss < 1e-13 * top + 1e-8 * theirs[line],
+                miss < 1e-13 * top + skirt * theirs[line],
                 "{name}, line {line}: {} {}",
                 ours[line],
                 theirs[line]
