@@ -2,6 +2,7 @@
 
 use crate::{Peak, WindowLobe};
 use shaftwise_orders::AveragedSpectrum;
+use std::ops::Range;
 
 /// One order in both spectra. Powers are mean squares, places and widths in lines.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -26,13 +27,15 @@ pub struct ComparedPeak {
 
 /// Sets a tracked peak beside the smeared spectrum.
 ///
-/// The band of both is the peak ± (`half_spread` · place + 4 lines), `half_spread` being half the
+/// The smeared peak is looked for in `zone`, the lines half-way to the neighbouring peaks, and within
+/// the band; the sums go over the whole band. The band of both is the peak ± (`half_spread` · place + 4 lines), `half_spread` being half the
 /// swing of the speed over its mean: as far as the order travels in the plain spectrum.
 #[must_use]
 pub fn compare_peak(
     peak: &Peak,
     tracked: &AveragedSpectrum,
     smeared: &AveragedSpectrum,
+    zone: Range<usize>,
     half_spread: f64,
     noise_bandwidth: f64,
     lobe: &WindowLobe,
@@ -43,7 +46,9 @@ pub fn compare_peak(
     let to = ((peak.place + half).floor() as usize + 1).min(lines);
     let band = from.min(peak.line)..to.max(peak.line + 1);
     let sum = |s: &AveragedSpectrum| s.mean[band.clone()].iter().sum::<f64>() / noise_bandwidth;
-    let top = band
+    // Half-way to the neighbouring peaks: what lies beyond belongs to them.
+    let zone = band.start.max(zone.start).min(peak.line)..band.end.min(zone.end).max(peak.line + 1);
+    let top = zone
         .clone()
         .max_by(|a, b| smeared.mean[*a].total_cmp(&smeared.mean[*b]).then(b.cmp(a)))
         .unwrap_or(peak.line);
@@ -54,10 +59,26 @@ pub fn compare_peak(
         smeared: smeared_power,
         smeared_place,
         tracked_width: width(&tracked.mean, peak.line, peak.line, peak.line + 1),
-        smeared_width: width(&smeared.mean, top, band.start, band.end),
+        smeared_width: width(&smeared.mean, top, zone.start, zone.end),
         tracked_sum: sum(tracked),
         smeared_sum: sum(smeared),
     }
+}
+
+/// The lines nearer to each peak than to any other, in the peaks' own order.
+#[must_use]
+pub fn peak_zones(peaks: &[Peak], lines: usize) -> Vec<Range<usize>> {
+    let half_way = |a: usize, b: usize| (a + b).div_ceil(2);
+    peaks
+        .iter()
+        .map(|peak| {
+            let others = || peaks.iter().map(|other| other.line);
+            let below = others().filter(|line| *line < peak.line).max();
+            let above = others().filter(|line| *line > peak.line).min();
+            below.map_or(0, |line| half_way(line, peak.line))
+                ..above.map_or(lines, |line| half_way(peak.line, line))
+        })
+        .collect()
 }
 
 /// Power and place between lines: the window's own lobe while the peak is that narrow, else the

@@ -3,8 +3,8 @@
 use crate::WindowLobe;
 use shaftwise_orders::{AveragedSpectrum, SpectrumPlan};
 use shaftwise_signal::{
-    LineScatter, chi_square_quantile, equivalent_averages, level_bounds, median_in_place,
-    tone_equivalent_averages,
+    LineScatter, chi_square_quantile, chi_square_tail, equivalent_averages, level_bounds,
+    median_in_place, tone_equivalent_averages,
 };
 
 /// What to ask of a spectrum.
@@ -109,9 +109,9 @@ pub fn read_spectrum(
     let shared = w.len() as f64 * fourth / (square * square);
     let chance = reading.false_alarm / usable.max(1) as f64;
     // The noise level is itself a median (π/2 times the variance of a mean) of lines of which every
-    // `shared` count as one: its scatter adds to that of the line looked at.
-    let rarer = freedom / (1.0 + 0.5 * std::f64::consts::PI * shared / (2 * SIDE) as f64);
-    let stand_out = chi_square_quantile(1.0 - chance, rarer) / rarer;
+    // `shared` count as one.
+    let level_freedom = freedom * (2 * SIDE) as f64 / (0.5 * std::f64::consts::PI * shared);
+    let stand_out = f_quantile_above(chance, freedom, level_freedom);
 
     // Noise first with everything in, then without what stood out.
     let mut busy = vec![false; usable];
@@ -184,6 +184,40 @@ pub fn read_spectrum(
         total_lower,
         total_upper,
     }
+}
+
+/// The ratio of two independent χ²/ν with `freedom` and `level_freedom` degrees of freedom that is
+/// passed with probability `chance`: a line over a noise level that is itself estimated.
+///
+/// The law of the level is taken at its mid-quantiles, and the mean chance solved by halving.
+fn f_quantile_above(chance: f64, freedom: f64, level_freedom: f64) -> f64 {
+    const PARTS: usize = 96;
+    let levels: Vec<f64> = (0..PARTS)
+        .map(|i| {
+            chi_square_quantile((i as f64 + 0.5) / PARTS as f64, level_freedom) / level_freedom
+        })
+        .collect();
+    let passed = |ratio: f64| {
+        levels
+            .iter()
+            .map(|level| chi_square_tail(ratio * level * freedom, freedom))
+            .sum::<f64>()
+            / PARTS as f64
+    };
+    let (mut low, mut high) = (1.0, 2.0);
+    while passed(high) > chance {
+        low = high;
+        high *= 2.0;
+    }
+    for _ in 0..20 {
+        let middle = 0.5 * (low + high);
+        if passed(middle) > chance {
+            low = middle;
+        } else {
+            high = middle;
+        }
+    }
+    high
 }
 
 /// Bounds of a positive value with the given variance, as a χ² of the same mean and variance.
@@ -315,9 +349,14 @@ fn candidates(
     const MARGIN: f64 = 4.0;
     let mut left_over = 0.0f64;
     for top in tops {
+        // What is left of the bias stands on line 0; its lobe shows twice its mean square.
+        let bias = std::iter::once((0, 2.0 * power[0]));
+        let strong = kept.iter().map(|&line| (line, power[line])).chain(bias);
         let hidden = power[top] < left_over
-            || kept.iter().any(|&strong| {
-                power[top] < MARGIN * power[strong] * lobe.skirt(top.abs_diff(strong))
+            || strong.into_iter().any(|(line, level)| {
+                // Skirt and noise add as amplitudes at worst.
+                let skirt = (MARGIN * level * lobe.skirt(top.abs_diff(line))).sqrt();
+                power[top].sqrt() < skirt + (noise[top] * stand_out).sqrt()
             });
         if !hidden {
             kept.push(top);

@@ -1,6 +1,6 @@
 //! Averaged spectra of blocks of equal steps: of angle (orders) or of time (hertz), the same code.
 //!
-//! Block of N samples x, its weighted mean taken off, window w: X_k = Σ w x e^{−j2πkn/N},
+//! Block of N samples x, its mean taken off, window w: X_k = Σ w x e^{−j2πkn/N},
 //! power of line k as mean square, one-sided: 2|X_k|²/(Σw)², for k = 0 and N/2 half of that. A sinusoid
 //! of amplitude A on line k gives A²/2 whatever the window. Lines run from 0 to `lines − 1`, in steps
 //! of 1/N of the sample rate.
@@ -125,8 +125,9 @@ impl SpectrumPlan {
         assert_eq!(block.len(), self.config.block, "samples in a block");
         assert_eq!(power.len(), self.config.lines, "lines kept");
         let w = self.window.samples();
-        // The weighted mean, so that line 0 comes out as zero: a bias of any size leaves no skirt.
-        let mean = w.iter().zip(block).map(|(w, x)| w * x).sum::<f64>() / self.window_sum;
+        // A sinusoid on any line but 0 has no mean over the block: taking it off removes a bias of
+        // any size, skirt and all, and leaves the lines of a wide lobe alone.
+        let mean = block.iter().sum::<f64>() / block.len() as f64;
         for ((t, x), w) in scratch.time.iter_mut().zip(block).zip(w) {
             *t = (x - mean) * w;
         }

@@ -11,48 +11,61 @@
 use crate::epoch::{EPOCHS, Epochs};
 use realfft::RealFftPlanner;
 use shaftwise_signal::median_in_place;
+use std::collections::BTreeMap;
 
 /// Differences between neighbouring groups of one size.
 #[derive(Debug, Clone, Default)]
 struct Level {
-    /// Sum over a group that waits for its neighbour.
-    waiting: Option<Vec<f64>>,
     /// Σ over pairs of the mean over m of ½ (difference of the groups' means)².
     variance_sum: f64,
     pairs: u64,
 }
 
-/// Groups of 1, 2, 4 … revolutions.
+/// Groups of 1, 2, 4 … revolutions. Group i of level k holds revolutions i·2^k … (i+1)·2^k − 1 of
+/// the whole run, so the groups do not depend on how the run was cut.
 #[derive(Debug, Clone, Default)]
 struct Cascade {
     levels: Vec<Level>,
+    /// Sums over groups that wait for their neighbour, by level and number.
+    waiting: BTreeMap<(usize, u64), Vec<f64>>,
 }
 
 impl Cascade {
-    /// Takes the sum over a group of 2^level revolutions.
-    fn push(&mut self, level: usize, sum: Vec<f64>) {
-        let (mut level, mut sum) = (level, sum);
-        loop {
+    /// Takes the sum over group `number` of 2^level revolutions.
+    fn push(&mut self, level: usize, number: u64, sum: Vec<f64>) {
+        let (mut level, mut number, mut sum) = (level, number, sum);
+        while let Some(other) = self.waiting.remove(&(level, number ^ 1)) {
             if self.levels.len() <= level {
                 self.levels.resize_with(level + 1, Level::default);
             }
             let here = &mut self.levels[level];
-            let Some(earlier) = here.waiting.take() else {
-                here.waiting = Some(sum);
-                return;
-            };
             let scale = 1.0 / (1u64 << level) as f64;
-            let square: f64 = earlier
+            let square: f64 = other
                 .iter()
                 .zip(&sum)
                 .map(|(a, b)| ((a - b) * scale).powi(2))
                 .sum();
             here.variance_sum += 0.5 * square / sum.len() as f64;
             here.pairs += 1;
-            for (s, e) in sum.iter_mut().zip(&earlier) {
-                *s += e;
+            for (s, o) in sum.iter_mut().zip(&other) {
+                *s += o;
             }
             level += 1;
+            number /= 2;
+        }
+        self.waiting.insert((level, number), sum);
+    }
+
+    fn merge(&mut self, later: Self) {
+        if self.levels.len() < later.levels.len() {
+            self.levels.resize_with(later.levels.len(), Level::default);
+        }
+        for (here, next) in self.levels.iter_mut().zip(later.levels) {
+            here.variance_sum += next.variance_sum;
+            here.pairs += next.pairs;
+        }
+        for ((level, number), sum) in later.waiting {
+            self.push(level, number, sum);
         }
     }
 }
@@ -68,18 +81,15 @@ struct Sums {
 #[derive(Debug, Clone)]
 pub struct SynchronousAccumulator {
     samples_per_rev: usize,
-    /// log2 of the revolutions a chunk groups at most.
-    chunk_level: usize,
     channels: Vec<Sums>,
     revolutions: u64,
     epoch_revolutions: [u64; EPOCHS],
 }
 
 impl SynchronousAccumulator {
-    /// An empty one for `channels` channels of `samples_per_rev` samples; a chunk holds about
-    /// `chunk_revolutions` revolutions.
+    /// An empty one for `channels` channels of `samples_per_rev` samples.
     #[must_use]
-    pub fn new(samples_per_rev: usize, channels: usize, chunk_revolutions: u64) -> Self {
+    pub fn new(samples_per_rev: usize, channels: usize) -> Self {
         let sums = Sums {
             by_epoch: Epochs::default(),
             square: vec![0.0; samples_per_rev],
@@ -87,22 +97,24 @@ impl SynchronousAccumulator {
         };
         Self {
             samples_per_rev,
-            chunk_level: chunk_revolutions.max(1).ilog2() as usize,
             channels: vec![sums; channels],
             revolutions: 0,
             epoch_revolutions: [0; EPOCHS],
         }
     }
 
-    /// Takes one revolution of every channel. `epoch` is below [`EPOCHS`].
+    /// Takes one revolution of every channel, number `number` of the whole run. `epoch` is below
+    /// [`EPOCHS`].
     ///
     /// # Panics
     /// If the number of channels or a revolution's length is not as planned.
-    pub fn push<'a>(&mut self, epoch: usize, revolutions: impl IntoIterator<Item = &'a [f64]>) {
+    pub fn push<'a>(
+        &mut self,
+        epoch: usize,
+        number: u64,
+        revolutions: impl IntoIterator<Item = &'a [f64]>,
+    ) {
         let mut seen = 0;
-        // Groups must not straddle chunks: the revolutions past the last whole group only count
-        // in the sums.
-        let grouped = self.revolutions < 1 << self.chunk_level;
         for (sums, revolution) in self.channels.iter_mut().zip(revolutions) {
             assert_eq!(
                 revolution.len(),
@@ -113,9 +125,7 @@ impl SynchronousAccumulator {
             for (s, x) in sums.square.iter_mut().zip(revolution) {
                 *s += x * x;
             }
-            if grouped {
-                sums.cascade.push(0, revolution.to_vec());
-            }
+            sums.cascade.push(0, number, revolution.to_vec());
             seen += 1;
         }
         assert_eq!(seen, self.channels.len(), "one revolution of every channel");
@@ -130,20 +140,7 @@ impl SynchronousAccumulator {
             for (s, n) in sums.square.iter_mut().zip(&next.square) {
                 *s += n;
             }
-            for (level, next) in next.cascade.levels.into_iter().enumerate() {
-                if sums.cascade.levels.len() <= level {
-                    sums.cascade.levels.resize_with(level + 1, Level::default);
-                }
-                let here = &mut sums.cascade.levels[level];
-                here.variance_sum += next.variance_sum;
-                here.pairs += next.pairs;
-                // Only a whole chunk's group goes on to pair with its neighbour.
-                if level == self.chunk_level
-                    && let Some(sum) = next.waiting
-                {
-                    sums.cascade.push(level, sum);
-                }
-            }
+            sums.cascade.merge(next.cascade);
         }
         self.revolutions += later.revolutions;
         for (s, n) in self
@@ -306,7 +303,7 @@ mod tests {
     /// Comb of N averages at `offset` orders from a whole one.
     fn comb(revolutions: u64, order: f64) -> f64 {
         let m = 64;
-        let mut sums = SynchronousAccumulator::new(m, 2, 16);
+        let mut sums = SynchronousAccumulator::new(m, 2);
         for r in 0..revolutions {
             let part = |shift: f64| -> Vec<f64> {
                 (0..m)
@@ -315,6 +312,7 @@ mod tests {
             };
             sums.push(
                 (r * 12 / revolutions) as usize,
+                r,
                 [part(0.0).as_slice(), part(0.25).as_slice()],
             );
         }
@@ -354,14 +352,15 @@ mod tests {
             }
             sum
         };
-        let mut total = SynchronousAccumulator::new(m, 1, 64);
+        let mut total = SynchronousAccumulator::new(m, 1);
         for chunk in 0..n / 64 {
-            let mut part = SynchronousAccumulator::new(m, 1, 64);
+            let mut part = SynchronousAccumulator::new(m, 1);
             for r in 0..64 {
                 let x: Vec<f64> = (0..m)
                     .map(|i| (2.0 * PI * i as f64 / m as f64).cos() + noise())
                     .collect();
-                part.push(((chunk * 64 + r) * 12 / n) as usize, [x.as_slice()]);
+                let number = chunk * 64 + r;
+                part.push((number * 12 / n) as usize, number, [x.as_slice()]);
             }
             total.merge(part);
         }
@@ -395,13 +394,13 @@ mod tests {
         // The jitter takes the quantiles of the law, so that the mean is no matter of chance.
         let n = 4000u64;
         let m = 128;
-        let mut sums = SynchronousAccumulator::new(m, 1, 64);
+        let mut sums = SynchronousAccumulator::new(m, 1);
         for r in 0..n {
             let shift = shaftwise_signal::normal_quantile((r as f64 + 0.5) / n as f64) * PI / 180.0;
             let x: Vec<f64> = (0..m)
                 .map(|i| (40.0 * (2.0 * PI * i as f64 / m as f64 + shift)).cos())
                 .collect();
-            sums.push((r * 12 / n) as usize, [x.as_slice()]);
+            sums.push((r * 12 / n) as usize, r, [x.as_slice()]);
         }
         let orders = revolution_orders(&sums.finish()[0].mean, 50);
         assert_abs_diff_eq!(orders[40].amplitude, 0.78373, epsilon = 2e-4);

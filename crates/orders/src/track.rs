@@ -201,7 +201,7 @@ impl Track {
             first += per_rev;
         }
         while last > first && !fits(last) {
-            last -= per_rev;
+            last -= 1;
         }
         (last > first).then_some(Stretch {
             section: number,

@@ -98,7 +98,7 @@ fn several(out: &mut Page, mut parts: Vec<Part>, analysis: &AnalysisResult) {
 fn next_command(analysis: &AnalysisResult) -> &'static str {
     match analysis {
         AnalysisResult::Spectrum(_) => "compare",
-        AnalysisResult::Compare(r) if !r.plain_is_good_enough => "synchronous",
+        AnalysisResult::Compare(r) if r.plain_is_good_enough == Some(false) => "synchronous",
         AnalysisResult::Speed(_) | AnalysisResult::Synchronous(_) | AnalysisResult::Compare(_) => {
             "spectrum"
         }
@@ -150,11 +150,13 @@ pub fn report_summary(result: &RunResult, written: &[PathBuf], context: &Context
     out.text
 }
 
-pub(crate) fn plain_verdict(good_enough: bool) -> &'static str {
-    if good_enough {
-        "No listed peak lost 1 dB: plain averaging is good enough for this recording at this resolution."
-    } else {
-        "Plain averaging is not good enough for this recording at this resolution."
+pub(crate) fn plain_verdict(good_enough: Option<bool>) -> &'static str {
+    match good_enough {
+        Some(true) => {
+            "No listed peak lost 1 dB: plain averaging is good enough for this recording at this resolution."
+        }
+        Some(false) => "Plain averaging is not good enough for this recording at this resolution.",
+        None => "No peak stands out: nothing says whether plain averaging is good enough.",
     }
 }
 

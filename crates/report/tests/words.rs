@@ -233,7 +233,7 @@ fn hollow_run() -> RunResult {
                     peak.loss_db = f64::NAN;
                     peak.smeared_width_orders = f64::NAN;
                 }
-                r.plain_is_good_enough = true;
+                r.plain_is_good_enough = Some(true);
             }
         }
     }

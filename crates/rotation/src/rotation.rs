@@ -125,14 +125,29 @@ pub fn rotation_from_times(times_s: &[f64], config: &RotationConfig) -> Result<R
 /// Settings out of range, fewer than [`LEAST_PULSES`] usable pulses.
 pub fn rotation_from_scan(scan: &TachScan, config: &RotationConfig) -> Result<Rotation, Error> {
     check(config)?;
-    let positions: Vec<SamplePosition> = scan
+    let edge_sigma = scan.edge_sigma_s * config.sample_rate_hz;
+    // An edge that the recording's start or end cuts into has no level on one side: its half-way
+    // point is anybody's guess. Whole ones keep their own width and the timing's blur away.
+    let whole = (scan.edge_width_s * config.sample_rate_hz + 3.0 * scan.smoothing).ceil() as u64;
+    let inside = |p: &SamplePosition| p.index >= whole && p.index + whole < config.total_samples;
+    let (positions, cut): (Vec<_>, Vec<_>) = scan
         .edges
         .iter()
         .map(|edge| edge.position)
-        .filter(|position| position.index < config.total_samples)
-        .collect();
-    let edge_sigma = scan.edge_sigma_s * config.sample_rate_hz;
+        .partition(inside);
     let mut rotation = assemble(&positions, Some(edge_sigma), config, scan.warnings.clone())?;
+    for position in cut {
+        rotation.pulses.timed += 1;
+        rotation.pulses.rejected += 1;
+        rotation.ledger.push(LedgerEntry {
+            time_s: position.seconds(config.sample_rate_hz),
+            action: LedgerAction::Rejected,
+            reason: "its edge is cut by the start or end of the recording".to_owned(),
+        });
+    }
+    rotation
+        .ledger
+        .sort_by(|a, b| a.time_s.total_cmp(&b.time_s));
     let degrees = 360.0 * rotation.mean_speed();
     rotation.edge_width_deg = Some(scan.edge_width_s * degrees);
     rotation.pulse_width_deg = Some(scan.pulse_width_s * degrees);

@@ -84,17 +84,15 @@ pub(crate) enum Sums {
 }
 
 impl Sums {
-    pub(crate) fn new(consumer: &Consumer, chunk_revs: u64) -> Self {
+    pub(crate) fn new(consumer: &Consumer) -> Self {
         let channels = consumer.slots.len();
         match &consumer.feed {
             Feed::Spectrum(plan) => {
                 Self::Spectrum(SpectrumAccumulator::new(plan.clone(), channels))
             }
-            Feed::Synchronous => Self::Synchronous(SynchronousAccumulator::new(
-                consumer.block,
-                channels,
-                chunk_revs,
-            )),
+            Feed::Synchronous => {
+                Self::Synchronous(SynchronousAccumulator::new(consumer.block, channels))
+            }
         }
     }
 
@@ -111,7 +109,6 @@ impl Sums {
 pub(crate) struct PassTwo<'a> {
     pub(crate) recording: &'a Recording,
     pub(crate) tracks: &'a [TrackWork],
-    pub(crate) chunk_revs: u64,
     pub(crate) interpolation: InterpolationPlan,
     pub(crate) pyramid: PyramidPlan,
     /// By track, slot and level.
@@ -122,7 +119,7 @@ pub(crate) struct PassTwo<'a> {
 const LEVELS: usize = 21;
 
 impl<'a> PassTwo<'a> {
-    pub(crate) fn new(recording: &'a Recording, tracks: &'a [TrackWork], chunk_revs: u64) -> Self {
+    pub(crate) fn new(recording: &'a Recording, tracks: &'a [TrackWork]) -> Self {
         let conversions = tracks
             .iter()
             .map(|work| {
@@ -135,7 +132,6 @@ impl<'a> PassTwo<'a> {
         Self {
             recording,
             tracks,
-            chunk_revs,
             interpolation: InterpolationPlan::new(),
             pyramid: PyramidPlan::new(),
             conversions,
@@ -209,12 +205,7 @@ impl PassTwo<'_> {
         let mut sums: Vec<Vec<Sums>> = self
             .tracks
             .iter()
-            .map(|work| {
-                work.consumers
-                    .iter()
-                    .map(|c| Sums::new(c, self.chunk_revs))
-                    .collect()
-            })
+            .map(|work| work.consumers.iter().map(Sums::new).collect())
             .collect();
         let active = || {
             parts
@@ -263,7 +254,7 @@ impl PassTwo<'_> {
                                 .or_insert_with(|| plan.scratch());
                             sums.push(epoch, blocks, scratch);
                         }
-                        (Sums::Synchronous(sums), _) => sums.push(epoch, blocks),
+                        (Sums::Synchronous(sums), _) => sums.push(epoch, before + block, blocks),
                         (Sums::Spectrum(_), Feed::Synchronous) => {
                             unreachable!("sums are made for their feed")
                         }
@@ -397,11 +388,14 @@ impl PassTwo<'_> {
     }
 
     fn no_number(&self, channel: usize, sample: u64) -> Error {
-        let name = &self.recording.channels()[channel].name;
+        let name = match self.recording.channels()[channel].name.as_str() {
+            own if own == format!("channel {}", channel + 1) => String::new(),
+            own => format!(" ({own})"),
+        };
         let time = sample as f64 / self.recording.sample_rate_hz();
         Error::Setting {
             what: format!(
-                "channel {} ({name}) holds a value that is no finite number at {time:.4} s (sample {sample})",
+                "channel {}{name} holds a value that is no finite number at {time:.4} s (sample {sample})",
                 channel + 1
             ),
             hint: format!(

@@ -67,7 +67,7 @@ pub fn execute(job: &Job, control: &Control<'_>) -> Result<RunResult, Error> {
     let plan = plan::plan(&recording, tach, &spinning, &job.analyses)?;
     let totals = pass_two(&recording, &plan, job.threads, control)?;
     let speed = outcome::speed(&spinning, curve_step(&job.analyses, &spinning)?);
-    let analyses = outcome::outcomes(&spinning, &plan, &job.analyses, totals, &speed);
+    let analyses = outcome::outcomes(&spinning, &plan, job, totals, &speed);
     let mut said = std::collections::HashSet::new();
     warnings.retain(|warning| said.insert(warning.clone()));
     Ok(RunResult {
@@ -195,16 +195,11 @@ fn pass_two(
     let new_sums = || -> Vec<Vec<Sums>> {
         plan.tracks
             .iter()
-            .map(|work| {
-                work.consumers
-                    .iter()
-                    .map(|c| Sums::new(c, plan.chunk_revs))
-                    .collect()
-            })
+            .map(|work| work.consumers.iter().map(Sums::new).collect())
             .collect()
     };
     let mut totals = new_sums();
-    let pass = PassTwo::new(recording, &plan.tracks, plan.chunk_revs);
+    let pass = PassTwo::new(recording, &plan.tracks);
     let cancel = CancelOnly::of(control);
     let count = plan.chunks.len();
     for_each_in_order(

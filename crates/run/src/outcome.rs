@@ -1,5 +1,6 @@
 //! From sums to results.
 
+use crate::Job;
 use crate::chunk::Sums;
 use crate::plan::{AnalysisPlan, AveragesPlan, Place, Plan};
 use crate::results::{
@@ -10,7 +11,7 @@ use crate::results::{
 use crate::settings::{Analysis, Averaging, AxisChoice, Detector, SpectrumSettings};
 use crate::spinning::Spinning;
 use shaftwise_findings::{
-    SmearModel, SpectrumReading, Verdict, WindowLobe, compare_peak, read_spectrum,
+    SmearModel, SpectrumReading, Verdict, WindowLobe, compare_peak, peak_zones, read_spectrum,
 };
 use shaftwise_orders::{AveragedSpectrum, SpectrumPlan, revolution_orders};
 use shaftwise_rotation::{LedgerAction, PhaseReference};
@@ -105,15 +106,15 @@ impl Totals {
 pub(crate) fn outcomes(
     spinning: &Spinning,
     plan: &Plan,
-    analyses: &[Analysis],
+    job: &Job,
     mut totals: Totals,
     speed: &SpeedResult,
 ) -> Vec<Outcome> {
-    analyses
+    job.analyses
         .iter()
         .zip(&plan.analyses)
         .map(|(analysis, work)| {
-            let mut settings = settings_of(analysis);
+            let mut settings = settings_of(analysis, job);
             let mut warnings = Vec::new();
             let result = match (analysis, work) {
                 (Analysis::Spectrum(asked), AnalysisPlan::Averages { place, plan }) => {
@@ -131,7 +132,11 @@ pub(crate) fn outcomes(
                             spinning.rotation.pulses_per_rev
                         ));
                     }
-                    AnalysisResult::Synchronous(synchronous(plan, totals.revolutions(*place)))
+                    AnalysisResult::Synchronous(synchronous(
+                        plan,
+                        totals.revolutions(*place),
+                        &mut warnings,
+                    ))
                 }
                 (Analysis::Compare(_), AnalysisPlan::Compare { tracked, smeared, plan: averages }) => {
                     warnings.extend(averages.warnings.iter().cloned());
@@ -147,10 +152,18 @@ pub(crate) fn outcomes(
         .collect()
 }
 
-fn settings_of(analysis: &Analysis) -> serde_json::Value {
+fn settings_of(analysis: &Analysis, job: &Job) -> serde_json::Value {
     let mut value = serde_json::to_value(analysis).unwrap_or_default();
     if let Some(map) = value.as_object_mut() {
         map.shift_remove("command");
+        map.insert(
+            "tach".to_owned(),
+            serde_json::to_value(&job.tach).unwrap_or_default(),
+        );
+        map.insert(
+            "select".to_owned(),
+            serde_json::to_value(&job.select).unwrap_or_default(),
+        );
     }
     value
 }
@@ -350,12 +363,19 @@ fn spectrum(
 fn synchronous(
     plan: &AveragesPlan,
     averages: Vec<shaftwise_orders::SynchronousAverage>,
+    warnings: &mut Vec<String>,
 ) -> SynchronousResult {
     let channels = plan
         .channels
         .iter()
         .zip(averages)
         .map(|(channel, average)| {
+            if !(average.total_rms > 0.0) {
+                warnings.push(format!(
+                    "channel {}, {}: silent, so its share and noise reduction are left blank; is the sensor connected?",
+                    channel.number, channel.name
+                ));
+            }
             let highest = plan.max_order.min(plan.facts.reachable_order).floor() as u32;
             let orders = revolution_orders(&average.mean, highest);
             let length = average.mean.len();
@@ -424,14 +444,17 @@ fn compare(
             let reading = reading(plan, 1.0, AxisChoice::Orders, *power);
             let findings = read_spectrum(tracked, fft, &lobe, &reading);
             let step = facts.order_step;
+            let zones = peak_zones(&findings.peaks, tracked.mean.len());
             let peaks: Vec<ComparedPeak> = findings
                 .peaks
                 .iter()
-                .map(|peak| {
+                .zip(zones)
+                .map(|(peak, zone)| {
                     let both = compare_peak(
                         peak,
                         tracked,
                         smeared,
+                        zone,
                         0.5 * spread,
                         facts.noise_bandwidth_lines,
                         &lobe,
@@ -480,7 +503,10 @@ fn compare(
     CompareResult {
         blocks: facts.clone(),
         speed_spread: spread,
-        plain_is_good_enough: channels.iter().all(|c| c.onset.seen_order.is_none()),
+        plain_is_good_enough: channels
+            .iter()
+            .any(|c| !c.peaks.is_empty())
+            .then(|| channels.iter().all(|c| c.onset.seen_order.is_none())),
         channels,
     }
 }

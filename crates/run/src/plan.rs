@@ -66,7 +66,6 @@ pub(crate) enum AnalysisPlan {
 pub(crate) struct Plan {
     pub(crate) tracks: Vec<TrackWork>,
     pub(crate) chunks: Vec<Chunk>,
-    pub(crate) chunk_revs: u64,
     pub(crate) analyses: Vec<AnalysisPlan>,
 }
 
@@ -135,7 +134,6 @@ pub(crate) fn plan(
     Ok(Plan {
         tracks,
         chunks,
-        chunk_revs,
         analyses,
     })
 }
@@ -225,12 +223,14 @@ impl Planner<'_> {
         let steady = settings.axis == AxisChoice::Hz;
         let track = self.track(steady, &setup)?;
         let blocks = self.blocks(track, spectrum.config().block, spectrum.config().hop);
+        let mut warnings = Vec::new();
         let place = self.consume(
             track,
             &setup,
             Feed::Spectrum(spectrum.clone()),
-            cap(&blocks, averages),
+            cap(&blocks, averages, &mut warnings),
         )?;
+        setup.warnings.extend(warnings);
         let plan = self.averages_plan(place, &mut setup, Some(spectrum), steady);
         Ok(AnalysisPlan::Averages { place, plan })
     }
@@ -245,7 +245,11 @@ impl Planner<'_> {
         })?;
         let track = self.track(false, &setup)?;
         let block = setup.samples_per_rev as usize;
-        let blocks = cap(&self.blocks(track, block, block), settings.averages);
+        let blocks = cap(
+            &self.blocks(track, block, block),
+            settings.averages,
+            &mut setup.warnings,
+        );
         if blocks.iter().sum::<u64>() < 2 {
             return Err(Error::Setting {
                 what: format!(
@@ -285,7 +289,7 @@ impl Planner<'_> {
             .zip(self.blocks(smeared, block, hop))
             .map(|(a, b)| a.min(b))
             .collect();
-        let blocks = cap(&both, settings.averages);
+        let blocks = cap(&both, settings.averages, &mut setup.warnings);
         let tracked = self.consume(
             tracked,
             &setup,
@@ -383,6 +387,12 @@ impl Planner<'_> {
                 ),
                 hint: format!("--max-order {:.0}", reachable_order.floor()),
             });
+        }
+        let trusted = self.spinning.rotation.highest_trusted_order() / turning;
+        if max_order > trusted {
+            warnings.push(format!(
+                "orders above {trusted:.1} are not to be trusted: there the angle's own scatter passes 10 degrees (common practice)"
+            ));
         }
         if max_order > reachable_order {
             warnings.push(format!(
@@ -640,8 +650,16 @@ impl Planner<'_> {
     }
 }
 
-/// The first `averages` blocks.
-fn cap(blocks: &[u64], averages: Option<u64>) -> Vec<u64> {
+/// The first `averages` blocks; says so when there are fewer.
+fn cap(blocks: &[u64], averages: Option<u64>, warnings: &mut Vec<String>) -> Vec<u64> {
+    let there: u64 = blocks.iter().sum();
+    if let Some(asked) = averages
+        && asked > there
+    {
+        warnings.push(format!(
+            "{asked} averages asked for, the recording holds {there}: all of them are taken"
+        ));
+    }
     let mut left = averages.unwrap_or(u64::MAX);
     blocks
         .iter()

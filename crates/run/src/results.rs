@@ -358,8 +358,8 @@ pub struct CompareResult {
     pub blocks: BlockFacts,
     /// Full swing of the speed, (max − min)/mean.
     pub speed_spread: f64,
-    /// No listed peak lost 1 dB: plain averaging is good enough here.
-    pub plain_is_good_enough: bool,
+    /// No listed peak lost 1 dB: plain averaging is good enough here. Null without any peak.
+    pub plain_is_good_enough: Option<bool>,
     /// Channels.
     pub channels: Vec<CompareChannel>,
 }

@@ -31,12 +31,10 @@ const OFF_LAW_DB: f64 = 3.0;
 
 /// How the noise fell against the law.
 pub(crate) fn convergence_verdict(channel: &SynchronousChannel) -> String {
-    let curve = &channel.convergence;
-    let last = |values: &[f64]| values.iter().rev().copied().find(|v| v.is_finite());
-    let behind = match (last(&curve.law_db), last(&curve.seen_db)) {
-        (Some(law), Some(seen)) => law - seen,
-        _ => return "too few revolutions to set it against the 1/√N law".to_owned(),
-    };
+    let behind = 10.0 * (channel.revolutions as f64).log10() - channel.noise_reduction_db;
+    if !behind.is_finite() {
+        return "nothing to set against the 1/√N law".to_owned();
+    }
     if behind > OFF_LAW_DB {
         format!("{} dB short of the 1/√N law", fixed(behind, 1))
     } else if behind < -OFF_LAW_DB {
