@@ -75,6 +75,24 @@ enum Family {
     W64,
 }
 
+impl Family {
+    /// Bytes of the name and the size before the body of a chunk.
+    fn head_bytes(self) -> u64 {
+        match self {
+            Self::W64 => 24,
+            Self::Riff | Self::Rf64 => 8,
+        }
+    }
+
+    /// Chunks begin at multiples of this.
+    fn alignment(self) -> u64 {
+        match self {
+            Self::W64 => 8,
+            Self::Riff | Self::Rf64 => 2,
+        }
+    }
+}
+
 struct Chunk {
     id: [u8; 4],
     body: u64,
@@ -118,7 +136,9 @@ pub(crate) fn parse(
                     found: "data".into(),
                     expected: "a fmt chunk before it".into(),
                 })?;
-                return finish(&header, family, &format, &chunk, sample_rate_hz);
+                let mut warnings = Vec::new();
+                let bytes = data_length(&header, family, &chunk, &sizes64, &mut warnings)?;
+                return finish(&format, chunk.body, bytes, sample_rate_hz, warnings);
             }
             _ => {}
         }
@@ -211,15 +231,11 @@ fn chunk(header: &Header<'_>, family: Family, at: u64, sizes64: &Sizes64) -> Res
 }
 
 fn next_chunk(family: Family, chunk: &Chunk, at: u64) -> Result<u64, Error> {
-    let (alignment, size_at) = if family == Family::W64 {
-        (8, 16)
-    } else {
-        (2, 4)
-    };
+    let size_at = if family == Family::W64 { 16 } else { 4 };
     chunk
         .stated
         .and_then(|stated| chunk.body.checked_add(stated))
-        .and_then(|end| end.checked_next_multiple_of(alignment))
+        .and_then(|end| end.checked_next_multiple_of(family.alignment()))
         .ok_or_else(|| Error::Header {
             field: "chunk size",
             offset: at + size_at,
@@ -386,13 +402,12 @@ fn codec(tag: u16) -> String {
 }
 
 fn finish(
-    header: &Header<'_>,
-    family: Family,
     format: &Format,
-    chunk: &Chunk,
+    data_offset: u64,
+    data_bytes: u64,
     sample_rate_hz: Option<f64>,
+    mut warnings: Vec<String>,
 ) -> Result<Parsed, Error> {
-    let mut warnings = Vec::new();
     let sample_rate_hz = match sample_rate_hz {
         Some(rate) => {
             if rate != f64::from(format.sample_rate) {
@@ -413,7 +428,6 @@ fn finish(
         }
         None => f64::from(format.sample_rate),
     };
-    let data_bytes = data_length(header, family, chunk, &mut warnings)?;
     let frame_bytes = format.frame_bytes;
     let frames = data_bytes / frame_bytes as u64;
     let rest = data_bytes % frame_bytes as u64;
@@ -430,7 +444,7 @@ fn finish(
     }
     Ok(Parsed {
         layout: Layout {
-            data_offset: chunk.body,
+            data_offset,
             frames,
             frame_bytes,
             format: format.sample,
@@ -448,6 +462,7 @@ fn data_length(
     header: &Header<'_>,
     family: Family,
     chunk: &Chunk,
+    sizes64: &Sizes64,
     warnings: &mut Vec<String>,
 ) -> Result<u64, Error> {
     let there = header.bytes.saturating_sub(chunk.body);
@@ -463,7 +478,8 @@ fn data_length(
         ));
         return Ok(there);
     }
-    if stated == 0 && there > 0 && !complete(header, family)? {
+    let behind = || chunks_follow(header, family, chunk.body, stated, sizes64);
+    if stated == 0 && there > 0 && (!complete(header, family)? || !behind()) {
         warnings.push(format!(
             "the header states no data but {there} bytes follow (the recorder was not stopped properly); read them all"
         ));
@@ -477,7 +493,47 @@ fn data_length(
         ));
         return Ok(there);
     }
+    // Less than a chunk's header behind the data is padding, not worth a doubt.
+    if there - stated >= family.head_bytes() && !behind() {
+        warnings.push(format!(
+            "the header states {stated} bytes of data but {there} follow, with no chunk behind the stated ones; read them all"
+        ));
+        return Ok(there);
+    }
     Ok(stated)
+}
+
+/// Whether the file goes on from the end of the data with chunks that fit into it, up to its end.
+/// Samples that look like that are too rare to reckon with.
+fn chunks_follow(
+    header: &Header<'_>,
+    family: Family,
+    mut body: u64,
+    mut stated: u64,
+    sizes64: &Sizes64,
+) -> bool {
+    let head = family.head_bytes();
+    let fits = |at: u64| {
+        let chunk = chunk(header, family, at, sizes64).ok()?;
+        let size = chunk.stated?;
+        // The GUIDs of a W64 need not be letters; its sizes of 64 bits are telling enough.
+        let named = family == Family::W64 || chunk.id.iter().all(|c| matches!(c, b' '..=b'~'));
+        (named && size <= header.bytes.saturating_sub(chunk.body)).then_some((chunk.body, size))
+    };
+    for n in 0..MAX_CHUNKS {
+        // both fit into the file
+        let end = body + stated;
+        let padded = end.next_multiple_of(family.alignment());
+        if n > 0 && end + head > header.bytes {
+            return true;
+        }
+        // Some recorders forget to pad.
+        match fits(padded).or_else(|| fits(end)) {
+            Some(next) => (body, stated) = next,
+            None => return false,
+        }
+    }
+    true
 }
 
 /// Whether the outermost length agrees with the file, that is, the recorder

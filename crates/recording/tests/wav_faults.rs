@@ -256,18 +256,41 @@ fn a_data_length_that_lies_is_read_as_far_as_it_goes() {
     warned(&crashed.bytes(), 5, "not stopped properly");
     let bytes = sound.bytes();
     warned(&bytes[..bytes.len() - 1], 4, "3 of 4 bytes");
-    // a short length that can be true is believed
-    let shorter = Wav {
-        data_size: Some(8),
-        ..wav(2, 5)
-    };
-    assert_eq!(open(&shorter.bytes()).unwrap().frames(), 2);
     // an empty recording properly closed, with a chunk behind, has no samples
     let empty = Wav {
         after: b"LIST\x04\0\0\0INFO".to_vec(),
         ..wav(2, 0)
     };
     refused(&empty.bytes(), &["no samples"]);
+}
+
+#[test]
+fn a_data_length_that_is_short_is_believed_only_with_chunks_behind() {
+    let lying = |data_size, after: &[u8]| Wav {
+        data_size: Some(data_size),
+        after: after.to_vec(),
+        ..wav(2, 5)
+    };
+    warned(&lying(8, b"").bytes(), 5, "states 8 bytes of data but 20");
+    // the outermost length may be right, the data are there all the same
+    warned(&lying(0, b"").bytes(), 5, "not stopped properly");
+    // letters, but a size beyond the end of the file
+    warned(
+        &lying(20, b"LIST\xff\0\0\0INFO").bytes(),
+        8,
+        "20 bytes of data but 32",
+    );
+    for behind in [
+        &b"LIST\x04\0\0\0INFO"[..],
+        b"LIST\x05\0\0\0INFOx\0id3 \0\0\0\0",
+        b"LIST\x05\0\0\0INFOxid3 \0\0\0\0",
+        b"LIST\x04\0\0\0INFO\0\0",
+        b"\0\0\0",
+    ] {
+        let recording = open(&lying(20, behind).bytes()).unwrap();
+        assert_eq!(recording.frames(), 5, "{behind:?}");
+        assert_eq!(recording.warnings(), &[] as &[String], "{behind:?}");
+    }
 }
 
 #[test]
