@@ -115,7 +115,7 @@ fn coverage(
         for block in 0..averages {
             sums.push(
                 block * 12 / averages,
-                [&x[block * HOP..block * HOP + BLOCK]],
+                [(&x[block * HOP..block * HOP + BLOCK], 0.0)],
                 &mut scratch,
             );
         }
@@ -201,7 +201,7 @@ fn a_tilted_floor_is_no_peak() {
         for block in 0..32 {
             sums.push(
                 block * 12 / 32,
-                [&x[block * HOP..block * HOP + BLOCK]],
+                [(&x[block * HOP..block * HOP + BLOCK], 0.0)],
                 &mut scratch,
             );
         }
@@ -245,7 +245,7 @@ fn noise_alone_gives_a_peak_in_one_spectrum_of_twenty() {
             Generator::new(9000 + machine).fill_gaussian(0, &mut x);
             let mut sums = SpectrumAccumulator::new(plan.clone(), 1);
             for block in 0..averages {
-                let part = [&x[block * HOP..block * HOP + BLOCK]];
+                let part = [(&x[block * HOP..block * HOP + BLOCK], 0.0)];
                 sums.push(block * 12 / averages, part, &mut scratch);
             }
             let found = read_spectrum(&sums.finish()[0], &plan, &lobe, &READING);
@@ -279,7 +279,7 @@ fn the_skirt_of_a_strong_tone_is_no_peak() {
         }
         let mut sums = SpectrumAccumulator::new(plan.clone(), 1);
         for block in 0..32 {
-            let part = [&x[block * HOP..block * HOP + BLOCK]];
+            let part = [(&x[block * HOP..block * HOP + BLOCK], 0.0)];
             sums.push(block * 12 / 32, part, &mut scratch);
         }
         let found = read_spectrum(&sums.finish()[0], &plan, &lobe, &READING);

@@ -1,6 +1,6 @@
 //! Averaged spectra of blocks of equal steps: of angle (orders) or of time (hertz), the same code.
 //!
-//! Block of N samples x, its mean taken off, window w: X_k = Σ w x e^{−j2πkn/N},
+//! Block of N samples x, the channel's bias taken off, window w: X_k = Σ w x e^{−j2πkn/N},
 //! power of line k as mean square, one-sided: 2|X_k|²/(Σw)², for k = 0 and N/2 half of that. A sinusoid
 //! of amplitude A on line k gives A²/2 whatever the window. Lines run from 0 to `lines − 1`, in steps
 //! of 1/N of the sample rate.
@@ -117,19 +117,23 @@ impl SpectrumPlan {
         }
     }
 
-    /// One-sided mean square of every line of one block.
+    /// One-sided mean square of every line of one block, `bias` taken off its samples first: a bias
+    /// of any size then leaves no skirt.
     ///
     /// # Panics
     /// If the block or `power` has another length than planned.
-    pub fn power(&self, block: &[f64], scratch: &mut SpectrumScratch, power: &mut [f64]) {
+    pub fn power(
+        &self,
+        block: &[f64],
+        bias: f64,
+        scratch: &mut SpectrumScratch,
+        power: &mut [f64],
+    ) {
         assert_eq!(block.len(), self.config.block, "samples in a block");
         assert_eq!(power.len(), self.config.lines, "lines kept");
         let w = self.window.samples();
-        // A sinusoid on any line but 0 has no mean over the block: taking it off removes a bias of
-        // any size, skirt and all, and leaves the lines of a wide lobe alone.
-        let mean = block.iter().sum::<f64>() / block.len() as f64;
         for ((t, x), w) in scratch.time.iter_mut().zip(block).zip(w) {
-            *t = (x - mean) * w;
+            *t = (x - bias) * w;
         }
         self.fft
             .process_with_scratch(&mut scratch.time, &mut scratch.lines, &mut scratch.fft)
@@ -205,20 +209,20 @@ impl SpectrumAccumulator {
         }
     }
 
-    /// Takes one block of every channel. `epoch` is below [`EPOCHS`].
+    /// Takes one block of every channel, with the channel's bias there. `epoch` is below [`EPOCHS`].
     ///
     /// # Panics
     /// If the number of channels or a block's length is not as planned.
     pub fn push<'a>(
         &mut self,
         epoch: usize,
-        blocks: impl IntoIterator<Item = &'a [f64]>,
+        blocks: impl IntoIterator<Item = (&'a [f64], f64)>,
         scratch: &mut SpectrumScratch,
     ) {
         let mut seen = 0;
         let first = self.blocks == 0;
-        for (sums, block) in self.channels.iter_mut().zip(blocks) {
-            self.plan.power(block, scratch, &mut self.power);
+        for (sums, (block, bias)) in self.channels.iter_mut().zip(blocks) {
+            self.plan.power(block, bias, scratch, &mut self.power);
             sums.power.add(epoch, &self.power);
             for (s, p) in sums.square.iter_mut().zip(&self.power) {
                 *s += p * p;
@@ -371,7 +375,7 @@ mod tests {
         for cut in cuts {
             let mut part = SpectrumAccumulator::new(plan.clone(), 1);
             for i in next..*cut {
-                part.push(i * EPOCHS / 24, [block(i).as_slice()], &mut scratch);
+                part.push(i * EPOCHS / 24, [(block(i).as_slice(), 0.0)], &mut scratch);
             }
             next = *cut;
             total.merge(part);
@@ -386,7 +390,7 @@ mod tests {
             .map(|n| 1e4 + 3.0 * (2.0 * PI * 9.0 * n as f64 / 64.0 + 0.3).cos())
             .collect();
         let mut power = vec![0.0; 33];
-        plan.power(&x, &mut plan.scratch(), &mut power);
+        plan.power(&x, 1e4, &mut plan.scratch(), &mut power);
         assert_relative_eq!(power[9], 4.5, max_relative = 1e-9);
         assert!(power[0] < 1e-15);
         // Windowed Parseval: the sum of lines over the noise bandwidth is the mean square.
@@ -424,7 +428,7 @@ mod tests {
         let mut expected: Option<Vec<f64>> = None;
         for i in 0..24 {
             let mut power = vec![0.0; 33];
-            plan.power(&block(i), &mut scratch, &mut power);
+            plan.power(&block(i), 0.0, &mut scratch, &mut power);
             expected = Some(match expected {
                 None => power,
                 Some(y) => y

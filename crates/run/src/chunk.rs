@@ -147,6 +147,8 @@ pub(crate) struct Space {
     halved: [Vec<f64>; 2],
     signals: Vec<Signal>,
     grid: Vec<Vec<f64>>,
+    /// Bias of each slot's grid.
+    bias: Vec<f64>,
     converted: Vec<Vec<f64>>,
     taps: Taps,
     spectra: BTreeMap<(usize, usize), SpectrumScratch>,
@@ -248,11 +250,12 @@ impl PassTwo<'_> {
                         .map(|slot| &grid[*slot][start..start + consumer.block]);
                     match (&mut *sums, &consumer.feed) {
                         (Sums::Spectrum(sums), Feed::Spectrum(plan)) => {
+                            let bias = consumer.slots.iter().map(|slot| space.bias[*slot]);
                             let scratch = space
                                 .spectra
                                 .entry((number, index))
                                 .or_insert_with(|| plan.scratch());
-                            sums.push(epoch, blocks, scratch);
+                            sums.push(epoch, blocks.zip(bias), scratch);
                         }
                         (Sums::Synchronous(sums), _) => sums.push(epoch, before + block, blocks),
                         (Sums::Spectrum(_), Feed::Synchronous) => {
@@ -474,8 +477,30 @@ impl PassTwo<'_> {
                 out.push(space.taps.apply(&self.interpolation, samples, *start));
             }
         }
+        space.bias.clear();
+        space
+            .bias
+            .extend(space.grid.iter().map(|grid| weighted_mean(grid)));
         Ok(())
     }
+}
+
+/// Mean of a chunk's samples under Hann's window. A component gives nothing to it from two turns of
+/// the whole chunk on, a fraction of a line: taking it off removes a bias and leaves every line alone.
+fn weighted_mean(samples: &[f64]) -> f64 {
+    let turn = std::f64::consts::TAU / samples.len().max(1) as f64;
+    let (step_sin, step_cos) = turn.sin_cos();
+    let (mut sin, mut cos, mut sum, mut weights) = (0.0f64, 1.0f64, 0.0, 0.0);
+    for x in samples {
+        let weight = 1.0 - cos;
+        sum += weight * x;
+        weights += weight;
+        (sin, cos) = (
+            sin * step_cos + cos * step_sin,
+            cos * step_cos - sin * step_sin,
+        );
+    }
+    if weights > 0.0 { sum / weights } else { 0.0 }
 }
 
 /// The part of a control that threads may share.
