@@ -66,7 +66,11 @@ pub fn execute(job: &Job, control: &Control<'_>) -> Result<RunResult, Error> {
 
     let plan = plan::plan(&recording, tach, &spinning, &job.analyses)?;
     let totals = pass_two(&recording, &plan, job.threads, control)?;
-    let speed = outcome::speed(&spinning, curve_step(&job.analyses, &spinning)?);
+    let speed = outcome::speed(
+        &spinning,
+        &job.select.exclude,
+        curve_step(&job.analyses, &spinning)?,
+    );
     let analyses = outcome::outcomes(&spinning, &plan, job, totals, &speed);
     let mut said = std::collections::HashSet::new();
     warnings.retain(|warning| said.insert(warning.clone()));

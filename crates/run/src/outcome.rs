@@ -8,7 +8,7 @@ use crate::results::{
     OnsetResult, Outcome, OverallResult, PeakResult, PeakVerdict, PulseFacts, SpectrumChannel,
     SpectrumResult, SpeedCurveResult, SpeedResult, SynchronousChannel, SynchronousResult,
 };
-use crate::settings::{Analysis, Averaging, AxisChoice, Detector, SpectrumSettings};
+use crate::settings::{Analysis, Averaging, AxisChoice, Detector, Exclusion, SpectrumSettings};
 use crate::spinning::Spinning;
 use shaftwise_findings::{
     SmearModel, SpectrumReading, Verdict, WindowLobe, compare_peak, peak_zones, read_spectrum,
@@ -25,7 +25,7 @@ const FALSE_ALARM: f64 = 0.05;
 const ONSET_DB: f64 = 1.0;
 
 /// Speed, ledger and curve.
-pub(crate) fn speed(spinning: &Spinning, step_s: f64) -> SpeedResult {
+pub(crate) fn speed(spinning: &Spinning, excluded: &[Exclusion], step_s: f64) -> SpeedResult {
     let rotation = &spinning.rotation;
     let rate = rotation.sample_rate_hz;
     let curve = rotation.curve(step_s);
@@ -68,6 +68,7 @@ pub(crate) fn speed(spinning: &Spinning, step_s: f64) -> SpeedResult {
             .iter()
             .map(|w| span(w.from, w.to))
             .collect(),
+        excluded: excluded.to_vec(),
         phase_reference: match rotation.phase_reference {
             PhaseReference::Pulse => "pulse",
             PhaseReference::Arbitrary => "arbitrary",

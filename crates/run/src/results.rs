@@ -3,7 +3,7 @@
 //! NaN stands for a figure that could not be worked out and becomes `null` in JSON; a warning says
 //! why. Levels are rms of the unit named, whatever the detector they are shown with.
 
-use crate::settings::{Averaging, AxisChoice, Detector};
+use crate::settings::{Averaging, AxisChoice, Detector, Exclusion};
 use serde::Serialize;
 
 /// The recording, as it was found.
@@ -109,6 +109,8 @@ pub struct SpeedResult {
     pub sections_s: Vec<(f64, f64)>,
     /// Start and end of what counts after selection, seconds.
     pub selected_s: Vec<(f64, f64)>,
+    /// Stretches left out, with the reasons given.
+    pub excluded: Vec<Exclusion>,
     /// `pulse`, `arbitrary` or `none`.
     pub phase_reference: String,
     /// Curve.

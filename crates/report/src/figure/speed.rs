@@ -1,10 +1,11 @@
 use shaftwise_figures::{
     Axis, Band, BandShade, Figure, MarkHeight, Marks, Panel, Role, Series, Span, SpanKind, Symbol,
 };
-use shaftwise_run::SpeedResult;
+use shaftwise_run::{Exclusion, SpeedResult};
 
 use super::{Drawing, Scene, foot, subtitle};
 use crate::number::{short, significant};
+use crate::shown::clean;
 use crate::words::{ledger_count, speed_range};
 
 /// Speed against time with its 1-sigma band, the ledger's marks, breaks and what was left out.
@@ -142,10 +143,18 @@ fn spans(speed: &SpeedResult) -> Vec<Span> {
                 from,
                 to,
                 kind: SpanKind::Excluded,
-                text: "not selected".to_owned(),
+                text: reason(speed, from, to).unwrap_or_else(|| "not selected".to_owned()),
             })
     });
     breaks.chain(unused).collect()
+}
+
+/// The reason given for leaving a stretch out, where one was.
+fn reason(speed: &SpeedResult, from: f64, to: f64) -> Option<String> {
+    let middle = 0.5 * (from + to);
+    let covers = |e: &&Exclusion| e.from_s <= middle && middle <= e.to_s;
+    let excluded = speed.excluded.iter().find(covers)?;
+    excluded.reason.as_deref().map(clean)
 }
 
 /// What of a stretch is in none of the others, which are in ascending order.

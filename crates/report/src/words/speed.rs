@@ -2,6 +2,7 @@ use shaftwise_run::SpeedResult;
 
 use super::{Part, SHAFT, speed_range};
 use crate::number::{count, fixed, significant};
+use crate::shown::clean;
 use crate::table::Table;
 
 /// `2 inserted, 3 rejected, 0 moved`.
@@ -37,6 +38,17 @@ pub(crate) fn speed_part(speed: &SpeedResult) -> Part {
         findings.push(format!(
             "Sampling had moved the instants of its short edges by {} µs rms; that was learned from the pulses and taken off.",
             significant(1e6 * speed.sampling_error_s, 2)
+        ));
+    }
+    for left_out in &speed.excluded {
+        findings.push(format!(
+            "Left out: {} to {} s, {}.",
+            significant(left_out.from_s, 4),
+            significant(left_out.to_s, 4),
+            left_out
+                .reason
+                .as_deref()
+                .map_or("no reason given".to_owned(), clean)
         ));
     }
     let pulses = &speed.pulses;
