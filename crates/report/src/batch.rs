@@ -1,9 +1,16 @@
+use std::fs;
 use std::io::{self, BufWriter, Write};
 use std::path::{Path, PathBuf};
+use std::sync::atomic::{AtomicBool, Ordering};
 
 use tempfile::NamedTempFile;
 
 use crate::Error;
+
+/// Names of temporary files are this, random letters and digits, and the suffix.
+const PREFIX: &str = ".shaftwise-";
+const SUFFIX: &str = ".tmp";
+const RANDOM_LETTERS: usize = 6;
 
 /// Why the content of a file could not be made.
 #[derive(Debug)]
@@ -36,6 +43,7 @@ impl From<io::Error> for Fault {
 pub(crate) struct Batch {
     folder: PathBuf,
     staged: Vec<(PathBuf, NamedTempFile)>,
+    cancel: Option<&'static AtomicBool>,
 }
 
 impl Batch {
@@ -43,6 +51,19 @@ impl Batch {
         Self {
             folder: folder.to_owned(),
             staged: Vec::new(),
+            cancel: None,
+        }
+    }
+
+    /// Gives up before the next file, or before the first gets its name, once this is set.
+    pub(crate) fn cancelled_by(self, cancel: Option<&'static AtomicBool>) -> Self {
+        Self { cancel, ..self }
+    }
+
+    fn go_on(&self) -> Result<(), Error> {
+        match self.cancel {
+            Some(cancel) if cancel.load(Ordering::Relaxed) => Err(Error::Cancelled),
+            _ => Ok(()),
         }
     }
 
@@ -52,6 +73,7 @@ impl Batch {
         name: impl AsRef<Path>,
         content: impl FnOnce(&mut dyn Write) -> Result<(), Fault>,
     ) -> Result<(), Error> {
+        self.go_on()?;
         let path = self.folder.join(name);
         let failed = |action, source| Error::File {
             path: path.clone(),
@@ -93,6 +115,7 @@ impl Batch {
 
     /// Gives every file its name, in the order they were staged.
     pub(crate) fn commit(self) -> Result<Vec<PathBuf>, Error> {
+        self.go_on()?;
         let mut written = Vec::new();
         for (path, file) in self.staged {
             file.persist(&path).map_err(|e| Error::File {
@@ -109,18 +132,48 @@ impl Batch {
 /// An empty file of a name of its own in the folder.
 pub(crate) fn temporary(folder: &Path) -> io::Result<NamedTempFile> {
     let mut builder = tempfile::Builder::new();
-    builder.prefix(".shaftwise-").suffix(".tmp");
+    builder
+        .prefix(PREFIX)
+        .suffix(SUFFIX)
+        .rand_bytes(RANDOM_LETTERS);
     // Temporary files are private by default; results are as open as the user's mask allows.
     #[cfg(unix)]
     builder.permissions(std::os::unix::fs::PermissionsExt::from_mode(0o666));
-    builder.tempfile_in(folder)
+    let file = builder.tempfile_in(folder)?;
+    // The lock says that somebody is still at work on it. Where there are no locks, no temporary
+    // file is ever taken for a stale one.
+    let _ = file.as_file().try_lock();
+    Ok(file)
+}
+
+/// Removes the temporary files that a killed run left in the folder; those of a living one are
+/// locked. Nobody asked for it, so what cannot be removed stays.
+pub(crate) fn remove_stale(folder: &Path) {
+    for entry in fs::read_dir(folder).into_iter().flatten().flatten() {
+        let plain = entry.file_type().is_ok_and(|kind| kind.is_file());
+        if !plain || !entry.file_name().to_str().is_some_and(is_temporary) {
+            continue;
+        }
+        let file = fs::OpenOptions::new().write(true).open(entry.path());
+        if file.is_ok_and(|file| file.try_lock().is_ok()) {
+            let _ = fs::remove_file(entry.path());
+        }
+    }
+}
+
+/// Whether [`temporary`] gives such names.
+fn is_temporary(name: &str) -> bool {
+    name.strip_prefix(PREFIX)
+        .and_then(|rest| rest.strip_suffix(SUFFIX))
+        .is_some_and(|random| {
+            random.len() == RANDOM_LETTERS && random.bytes().all(|b| b.is_ascii_alphanumeric())
+        })
 }
 
 #[cfg(test)]
 #[allow(clippy::unwrap_used)]
 mod tests {
     use super::*;
-    use std::fs;
 
     fn listing(folder: &Path) -> Vec<String> {
         let mut names: Vec<String> = fs::read_dir(folder)
@@ -164,6 +217,41 @@ mod tests {
         assert!(batch.commit().is_err());
         assert_eq!(listing(folder.path()), ["a.csv", "b.csv"]);
         assert_eq!(fs::read(folder.path().join("a.csv")).unwrap(), b"a.csv");
+    }
+
+    #[test]
+    fn a_cancelled_batch_stages_and_renames_nothing() {
+        static CANCEL: AtomicBool = AtomicBool::new(false);
+        let folder = tempfile::tempdir().unwrap();
+        let mut batch = Batch::new(folder.path()).cancelled_by(Some(&CANCEL));
+        batch.stage("a.csv", |_| Ok(())).unwrap();
+        CANCEL.store(true, Ordering::Relaxed);
+        let error = batch.stage("b.csv", |_| Ok(())).unwrap_err();
+        assert!(matches!(error, Error::Cancelled), "{error}");
+        assert!(matches!(batch.commit(), Err(Error::Cancelled)));
+        assert_eq!(listing(folder.path()), [""; 0]);
+    }
+
+    #[test]
+    fn only_temporary_files_that_nobody_works_on_are_stale() {
+        let folder = tempfile::tempdir().unwrap();
+        let others = [
+            ".shaftwise-.tmp",
+            ".shaftwise-abc12.tmp",
+            ".shaftwise-abc-12.tmp",
+            ".shaftwise-abc123.tmp.csv",
+            "shaftwise-abc123.tmp",
+        ];
+        for name in others {
+            fs::write(folder.path().join(name), "").unwrap();
+        }
+        fs::create_dir(folder.path().join(".shaftwise-folder.tmp")).unwrap();
+        let (_, stale) = temporary(folder.path()).unwrap().keep().unwrap();
+        let living = temporary(folder.path()).unwrap();
+        remove_stale(folder.path());
+        assert!(!stale.exists());
+        assert!(living.path().exists());
+        assert_eq!(listing(folder.path()).len(), others.len() + 2);
     }
 
     #[cfg(unix)]

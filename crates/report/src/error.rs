@@ -5,6 +5,9 @@ use std::path::PathBuf;
 #[derive(Debug, thiserror::Error)]
 #[non_exhaustive]
 pub enum Error {
+    /// The user stopped the run.
+    #[error("interrupted; nothing was written")]
+    Cancelled,
     /// The output folder is there, but it is no folder.
     #[error("{}: found a file, expected a folder for the results", path.display())]
     NotAFolder {
@@ -69,7 +72,7 @@ impl Error {
             Self::File { .. } | Self::Encode { .. } => {
                 Some("look whether the disk is full; files from before this run are untouched")
             }
-            Self::Setting { .. } | Self::Figure { .. } => None,
+            Self::Cancelled | Self::Setting { .. } | Self::Figure { .. } => None,
         }
     }
 }

@@ -1,10 +1,11 @@
 use std::fs;
 use std::path::{Path, PathBuf};
+use std::sync::atomic::AtomicBool;
 
 use shaftwise_figures::{RenderOptions, render, render_svg};
 use shaftwise_run::{AnalysisResult, RunResult};
 
-use crate::batch::{Batch, temporary};
+use crate::batch::{Batch, remove_stale, temporary};
 use crate::figure::{Drawing, Scene, analysis_figures, speed_figure};
 use crate::name::{FileNames, Stems};
 use crate::{Context, Error, command_json, curves, findings, json_text, report_json};
@@ -33,10 +34,11 @@ pub struct Prepared {
     options: OutputOptions,
     /// Folders made by this run, the outermost first.
     made: Vec<PathBuf>,
+    cancel: Option<&'static AtomicBool>,
 }
 
 /// Makes the folder if it is missing, with its parents, and tries that it takes a file. To be
-/// called before the long work.
+/// called before the long work. Temporary files that a killed run left there are removed.
 ///
 /// # Errors
 ///
@@ -71,6 +73,7 @@ pub fn prepare(options: &OutputOptions) -> Result<Prepared, Error> {
             ..options.clone()
         },
         made: Vec::new(),
+        cancel: None,
     };
     let failed = |action, source| Error::Folder {
         path: dir.to_owned(),
@@ -84,6 +87,7 @@ pub fn prepare(options: &OutputOptions) -> Result<Prepared, Error> {
             Err(error) => return Err(failed("make the folder", error)),
         }
     }
+    remove_stale(dir);
     temporary(dir)
         .and_then(tempfile::NamedTempFile::close)
         .map_err(|e| failed("write into the folder", e))?;
@@ -100,6 +104,14 @@ impl Drop for Prepared {
 }
 
 impl Prepared {
+    /// Gives up with [`Error::Cancelled`] once this is set: between files, and before the first of
+    /// a call gets its name, so that nothing of the call is left.
+    #[must_use]
+    pub fn cancelled_by(mut self, cancel: &'static AtomicBool) -> Self {
+        self.cancel = Some(cancel);
+        self
+    }
+
     /// The folder.
     #[must_use]
     pub fn dir(&self) -> &Path {
@@ -112,7 +124,7 @@ impl Prepared {
     ///
     /// If the file cannot be written; then one of that name from before is untouched.
     pub fn write_text(&self, name: &str, text: &str) -> Result<PathBuf, Error> {
-        let mut batch = Batch::new(&self.options.dir);
+        let mut batch = Batch::new(&self.options.dir).cancelled_by(self.cancel);
         batch.stage(name, |sink| Ok(sink.write_all(text.as_bytes())?))?;
         batch.commit()?;
         Ok(self.options.dir.join(name))
@@ -135,7 +147,7 @@ impl Prepared {
         index: usize,
         context: &Context,
     ) -> Result<Vec<PathBuf>, Error> {
-        let mut batch = Batch::new(&self.options.dir);
+        let mut batch = Batch::new(&self.options.dir).cancelled_by(self.cancel);
         let mut names = FileNames::default();
         let stems = Stems::new(result, index);
         self.stage_analysis(&mut batch, &mut names, result, index, &stems, context)?;
@@ -157,7 +169,7 @@ impl Prepared {
         result: &RunResult,
         context: &Context,
     ) -> Result<Vec<PathBuf>, Error> {
-        let mut batch = Batch::new(&self.options.dir);
+        let mut batch = Batch::new(&self.options.dir).cancelled_by(self.cancel);
         let mut names = FileNames::default();
         let mut pictures = vec![Vec::new(); result.analyses.len()];
         let asked = |o: &shaftwise_run::Outcome| matches!(o.result, AnalysisResult::Speed(_));
