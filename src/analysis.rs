@@ -9,6 +9,7 @@ use crate::speech::{ProgressLine, say, warn};
 use shaftwise_report::{Context, OutputOptions, Prepared};
 use shaftwise_run::{Analysis, Control, Job, RunResult};
 use std::path::{Path, PathBuf};
+use std::sync::atomic::AtomicBool;
 
 const VERSION: &str = env!("CARGO_PKG_VERSION");
 
@@ -20,11 +21,12 @@ pub(crate) fn analyse(
 ) -> Result<(), Failure> {
     request.run.analyses = vec![analysis];
     let job = request.job(output.threads)?;
+    let cancel = interruption()?;
     let prepared = match &output.out {
-        Some(out) => Some(prepare(out, output)?),
+        Some(out) => Some(prepare(out, output)?.cancelled_by(cancel)),
         None => None,
     };
-    let result = execute(&job, output.quiet)?;
+    let result = execute(&job, output.quiet, cancel, request.unused_recordings())?;
     let written = match &prepared {
         Some(prepared) => prepared.write_command(&result, 0, &context(&request, Paths::Bare))?,
         None => Vec::new(),
@@ -59,8 +61,9 @@ pub(crate) fn report(request: &Request, output: &OutputFlags) -> Result<(), Fail
         .out
         .clone()
         .unwrap_or_else(|| request.base.join("report"));
-    let prepared = prepare(&out, output)?;
-    let result = execute(&job, output.quiet)?;
+    let cancel = interruption()?;
+    let prepared = prepare(&out, output)?.cancelled_by(cancel);
+    let result = execute(&job, output.quiet, cancel, request.unused_recordings())?;
     let context = context(request, Paths::Bare);
     let written = prepared.write_report(&result, &context)?;
     warn_of(&result);
@@ -94,13 +97,20 @@ fn prepare(out: &Path, output: &OutputFlags) -> Result<Prepared, Failure> {
     })?)
 }
 
-fn execute(job: &Job, quiet: bool) -> Result<RunResult, Failure> {
+fn execute(
+    job: &Job,
+    quiet: bool,
+    cancel: &AtomicBool,
+    warning: Option<String>,
+) -> Result<RunResult, Failure> {
     let line = ProgressLine::new(quiet);
     let control = Control {
         progress: &|progress| line.show(progress),
-        cancel: interruption()?,
+        cancel,
     };
-    Ok(shaftwise_run::execute(job, &control)?)
+    let mut result = shaftwise_run::execute(job, &control)?;
+    result.warnings.splice(0..0, warning);
+    Ok(result)
 }
 
 fn context(request: &Request, paths: Paths) -> Context {

@@ -54,6 +54,10 @@ impl From<shaftwise_run::Error> for Failure {
 
 impl From<shaftwise_report::Error> for Failure {
     fn from(error: shaftwise_report::Error) -> Self {
-        Self::new(Status::Failed, error.to_string()).hint(error.hint().unwrap_or_default())
+        let status = match error {
+            shaftwise_report::Error::Cancelled => Status::Interrupted,
+            _ => Status::Failed,
+        };
+        Self::new(status, error.to_string()).hint(error.hint().unwrap_or_default())
     }
 }

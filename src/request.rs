@@ -7,8 +7,8 @@ use crate::flags::{
 };
 use crate::value::Calibration;
 use shaftwise_run::{
-    Analysis, ChannelSettings, CompareSettings, Fault, Job, RecordingSettings, RunFile,
-    SpectrumSettings, SpeedSettings, SynchronousSettings,
+    Analysis, ChannelPick, ChannelSettings, CompareSettings, Fault, Job, RecordingSettings,
+    RunFile, SpectrumSettings, SpeedSettings, SynchronousSettings,
 };
 use std::io::Read;
 use std::path::{Path, PathBuf};
@@ -21,6 +21,8 @@ pub(crate) struct Request {
     pub(crate) base: PathBuf,
     /// It was read from a run file.
     pub(crate) from_run_file: bool,
+    /// Its name, without the folder.
+    name: String,
 }
 
 impl Request {
@@ -38,6 +40,7 @@ impl Request {
                 run: RunFile::read(input)?,
                 base: base.to_path_buf(),
                 from_run_file: true,
+                name: name(input),
             });
         }
         let recording = RecordingSettings {
@@ -51,6 +54,7 @@ impl Request {
             },
             base: PathBuf::new(),
             from_run_file: false,
+            name: name(input),
         })
     }
 
@@ -88,6 +92,18 @@ impl Request {
         Ok(())
     }
 
+    /// A warning where the run file names recordings that are not looked at.
+    pub(crate) fn unused_recordings(&self) -> Option<String> {
+        let [first, _, ..] = self.run.recordings.as_slice() else {
+            return None;
+        };
+        let (name, count) = (&self.name, self.run.recordings.len());
+        let file = &first.file;
+        Some(format!(
+            "{name} names {count} recordings; only the first, {file}, is analysed"
+        ))
+    }
+
     /// The settings of the first analysis of a kind in the run file, else the defaults.
     fn base_of<T: Clone + Default>(&self, kind: impl Fn(&Analysis) -> Option<&T>) -> T {
         self.run
@@ -118,7 +134,7 @@ impl Request {
             shown_as,
             ratio,
         } = &flags.band;
-        set_some(&mut settings.channel, channel.clone());
+        set_some(&mut settings.channel, distinct(channel));
         set_some(&mut settings.max_order, *max_order);
         set_some(&mut settings.shown_as, *shown_as);
         set_some(&mut settings.ratio, ratio.clone());
@@ -152,7 +168,7 @@ impl Request {
             shown_as,
             ratio,
         } = &flags.band;
-        set_some(&mut settings.channel, channel.clone());
+        set_some(&mut settings.channel, distinct(channel));
         set_some(&mut settings.max_order, *max_order);
         set_some(&mut settings.shown_as, *shown_as);
         set_some(&mut settings.ratio, ratio.clone());
@@ -171,7 +187,7 @@ impl Request {
             shown_as,
             ratio,
         } = &flags.band;
-        set_some(&mut settings.channel, channel.clone());
+        set_some(&mut settings.channel, distinct(channel));
         set_some(&mut settings.max_order, *max_order);
         set_some(&mut settings.shown_as, *shown_as);
         set_some(&mut settings.ratio, ratio.clone());
@@ -243,6 +259,11 @@ fn is_run_file(input: &Path) -> bool {
     head.trim_ascii_start().first() == Some(&b'{')
 }
 
+fn name(input: &Path) -> String {
+    let name = input.file_name().unwrap_or(input.as_os_str());
+    name.to_string_lossy().into_owned()
+}
+
 fn utf8(path: &Path) -> Result<String, Failure> {
     path.to_str().map(str::to_owned).ok_or_else(|| {
         let message = format!("{}: a file name must be UTF-8", path.display());
@@ -274,6 +295,19 @@ fn calibrate(channels: &mut Vec<ChannelSettings>, calibration: &Calibration) {
         channel.unit.clone_from(&calibration.unit);
         channel.quantity = None;
     }
+}
+
+/// Each channel once, in the order first named.
+fn distinct(channels: &Option<Vec<ChannelPick>>) -> Option<Vec<ChannelPick>> {
+    channels.as_ref().map(|channels| {
+        let mut once = Vec::new();
+        for channel in channels {
+            if !once.contains(channel) {
+                once.push(channel.clone());
+            }
+        }
+        once
+    })
 }
 
 fn set<T>(setting: &mut T, flag: Option<T>) {
