@@ -191,6 +191,7 @@ pub(crate) struct SynchronousCommand {
     #[arg(
         long,
         value_name = "N",
+        value_parser = value::whole::<u64>("2 or more"),
         allow_negative_numbers = true,
         help_heading = "Analysis"
     )]
@@ -212,6 +213,17 @@ pub(crate) struct CompareCommand {
 }
 
 #[derive(Debug, Args)]
+#[command(
+    mut_arg("input", |input| input
+        .value_name("RUN.json")
+        .help("A run file; `shaftwise spectrum` and the like take a bare recording")
+        .long_help(
+            "A run file; `shaftwise spectrum` and the like take a bare recording\n\n\
+             Flags win over what the run file says."
+        )),
+    mut_arg("sample_rate", |flag| flag.help_heading("Recording")),
+    mut_arg("calibration", |flag| flag.help_heading("Recording")),
+)]
 pub(crate) struct ReportCommand {
     #[command(flatten)]
     pub(crate) common: CommonFlags,
@@ -257,6 +269,7 @@ pub(crate) struct CommonFlags {
     #[arg(
         long,
         value_name = "N",
+        value_parser = value::whole::<u32>("1 to 4096"),
         allow_negative_numbers = true,
         help_heading = "Tach"
     )]
@@ -322,7 +335,7 @@ pub(crate) struct LineFlags {
     #[arg(long, value_name = "PCT", value_parser = value::number, allow_negative_numbers = true)]
     pub(crate) overlap: Option<f64>,
     /// Blocks averaged [default: all]
-    #[arg(long, value_name = "N", allow_negative_numbers = true)]
+    #[arg(long, value_name = "N", value_parser = value::whole::<u64>("1 or more"), allow_negative_numbers = true)]
     pub(crate) averages: Option<u64>,
     /// How levels are shown [default: rms, displacement peak-to-peak]
     ///

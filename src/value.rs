@@ -15,6 +15,16 @@ pub(crate) fn number(text: &str) -> Result<f64, String> {
     }
 }
 
+/// A reader of whole numbers; `range` says in words which.
+pub(crate) fn whole<T: std::str::FromStr>(
+    range: &'static str,
+) -> impl Fn(&str) -> Result<T, String> + Clone {
+    move |text| {
+        let value = text.trim().parse();
+        value.map_err(|_| format!("expected a whole number, {range}"))
+    }
+}
+
 /// A channel's number from 1, or its name.
 pub(crate) fn channel(text: &str) -> Result<ChannelPick, String> {
     match text.trim() {

@@ -192,6 +192,35 @@ fn channels_are_picked_by_number_and_by_name() {
     folder
         .run("spectrum small.wav --tach 3 --channel 9")
         .fails(1, "9");
+    let twice = folder.run("spectrum small.wav --tach 3 --channel 2,2 --json");
+    assert_eq!(twice.json()["channels"].as_array().unwrap().len(), 1);
+}
+
+#[test]
+fn recordings_beside_the_first_are_not_dropped_silently() {
+    let folder = Folder::with_recording();
+    let one = "\"recordings\": [";
+    let two = format!("{one}{{\"file\": \"other.wav\"}}, ");
+    folder.change("run.json", one, &two);
+    std::fs::copy(folder.path("small.wav"), folder.path("other.wav")).unwrap();
+    for command in ["speed", "spectrum", "synchronous", "compare", "report"] {
+        folder
+            .run(&format!("{command} run.json --no-figures --quiet"))
+            .done()
+            .warns("run.json names 2 recordings; only the first, other.wav, is analysed");
+    }
+}
+
+#[test]
+fn a_report_asks_for_a_run_file_alone() {
+    let folder = Folder::empty();
+    for page in ["report -h", "report --help"] {
+        let help = folder.run(page);
+        help.done().says("report [OPTIONS] <RUN.json>");
+        for words in ["RECORDING", "Bare recordings", "standard input"] {
+            assert!(!help.stdout.contains(words), "{}", help.stdout);
+        }
+    }
 }
 
 #[test]
@@ -596,6 +625,28 @@ fn an_interrupted_run_leaves_nothing_and_says_so() {
     assert_eq!(folder.names(""), ["long.json"]);
 }
 
+#[cfg(unix)]
+#[test]
+fn a_report_interrupted_while_it_draws_leaves_nothing() {
+    let folder = Folder::with_recording();
+    let words = ["report", "run.json", "--dpi", "1200", "--out", "here"];
+    let child = folder.start(&words, |_| ());
+    // one file is only the trial whether the folder takes any
+    let drawing = || folder.path("here").exists() && folder.names("here").len() >= 2;
+    while !drawing() {
+        std::thread::sleep(std::time::Duration::from_millis(2));
+    }
+    let id = child.id().to_string();
+    let kill = std::process::Command::new("kill")
+        .args(["-INT", &id])
+        .status();
+    assert!(kill.unwrap().success());
+    let output = child.wait_with_output().unwrap();
+    assert_eq!(output.status.code(), Some(130));
+    assert!(String::from_utf8_lossy(&output.stderr).contains("error: interrupted"));
+    assert_eq!(folder.names(""), ["run.json", "small.wav"]);
+}
+
 // ---- the command line is wrong
 
 #[test]
@@ -669,7 +720,11 @@ fn values_out_of_range_are_shown_under_the_flags_name() {
         ),
         (
             "speed small.wav --tach 3 --pulses-per-rev -1",
-            "'-1' for '--pulses-per-rev <N>'",
+            "'-1' for '--pulses-per-rev <N>': expected a whole number, 1 to 4096",
+        ),
+        (
+            "spectrum small.wav --tach 3 --averages -1",
+            "'-1' for '--averages <N>': expected a whole number, 1 or more",
         ),
         (
             "speed small.wav --tach 3 --edge both",
