@@ -2,6 +2,8 @@
 //!
 //! cargo run --release --example engine
 
+#![allow(clippy::print_stdout)]
+
 use shaftwise_run::{
     Analysis, AnalysisResult, ChannelPick, Control, Job, RecordingSettings, TachSettings, execute,
 };
