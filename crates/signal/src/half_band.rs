@@ -2,19 +2,19 @@
 //!
 //! `y[n] = ½ x[2n] + Σ_k c_k (x[2n+2k+1] + x[2n−2k−1])`: a half-band low-pass with linear phase and no
 //! delay, so sample n of level l sits exactly at sample n·2^l of the recording. Passes up to
-//! 0.1525 of its input rate and stops from 0.3475, both within 134 dB; a kernel whose stop band
+//! 0.2033 of its input rate and stops from 0.2967, both within 147 dB; a kernel whose stop band
 //! starts below the former cannot tell which level it reads, so the level may change without a trace.
 
 use crate::interpolate::STOP_EDGE;
 use crate::kernel::{CpuLevel, half_band};
 use crate::window::bessel_i0;
 
-/// Pairs of taps around the centre: 4·12 − 1 taps over a transition of 0.195 give 134 dB
+/// Pairs of taps around the centre: 4·26 − 1 taps over a transition of 0.0934 give 147 dB
 /// (Kaiser's formula, as in the interpolation kernel).
-const PAIRS: usize = 12;
-const BETA: f64 = 13.84;
-/// Level rate that leaves the kernel's stop edge inside the pass band: 0.61·rate/0.1525/2.
-const LEAST_RATIO: f64 = STOP_EDGE / (2.0 * 0.1525);
+const PAIRS: usize = 26;
+const BETA: f64 = 15.24;
+/// Level rate that leaves the kernel's stop edge inside the pass band: 0.61·rate/0.2033/2.
+const LEAST_RATIO: f64 = STOP_EDGE / (2.0 * 0.2033);
 
 /// Tap values, shared by all stages.
 #[derive(Debug, Clone)]
@@ -58,8 +58,7 @@ impl PyramidPlan {
     #[must_use]
     pub fn levels(least_step: f64) -> u32 {
         let mut level = 0;
-        // The slack lets a step of exactly 4 samples use level 1.
-        while least_step >= LEAST_RATIO * f64::from(2u32 << level) * (1.0 - 1e-12) && level < 30 {
+        while least_step >= LEAST_RATIO * f64::from(2u32 << level) && level < 30 {
             level += 1;
         }
         level
@@ -166,8 +165,8 @@ mod tests {
                     .sum::<f64>()
         };
         for i in 0..=200 {
-            let pass = 0.1525 * f64::from(i) / 200.0;
-            let stop = 0.3475 + 0.1525 * f64::from(i) / 200.0;
+            let pass = 0.2033 * f64::from(i) / 200.0;
+            let stop = 0.2967 + 0.2033 * f64::from(i) / 200.0;
             assert!(
                 (response(pass) - 1.0).abs() < 4e-7,
                 "{pass}: {:e}",
@@ -183,14 +182,14 @@ mod tests {
         let input: Vec<f64> = (0..1001).map(|n| (0.2 * (100 + n) as f64).cos()).collect();
         let mut whole = Vec::new();
         let mut stage = HalfBand::new(100);
-        assert_eq!(stage.next_output(), 62);
+        assert_eq!(stage.next_output(), 76);
         stage.push(&plan, &input, &mut whole);
         for (n, y) in whole.iter().enumerate() {
-            assert!((y - (0.4 * (62 + n) as f64).cos()).abs() < 4e-7);
+            assert!((y - (0.4 * (76 + n) as f64).cos()).abs() < 4e-7);
         }
         let mut from_odd = Vec::new();
         let mut stage = HalfBand::new(101);
-        assert_eq!(stage.next_output(), 63);
+        assert_eq!(stage.next_output(), 77);
         stage.push(&plan, &input[1..], &mut from_odd);
         assert_eq!(from_odd, whole[1..]);
         for split in [1, 2, 3, 7, 64, 1000] {
@@ -207,11 +206,11 @@ mod tests {
     fn levels_follow_the_step() {
         for (step, level) in [
             (0.5, 0),
-            (3.9, 0),
-            (4.0, 1),
-            (7.9, 1),
-            (8.0, 2),
-            (1000.0, 8),
+            (2.9, 0),
+            (3.1, 1),
+            (5.9, 1),
+            (6.1, 2),
+            (1000.0, 9),
         ] {
             assert_eq!(PyramidPlan::levels(step), level, "{step}");
         }

@@ -99,7 +99,8 @@ impl InterpolationPlan {
     pub fn cpu_level(&self) -> &'static str {
         match self.level {
             CpuLevel::Portable => "portable",
-            CpuLevel::Avx2Fma => "avx2+fma",
+            // One level: the wider registers give the same bits.
+            CpuLevel::Avx2Fma | CpuLevel::Avx512 => "avx2+fma",
         }
     }
 

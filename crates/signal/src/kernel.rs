@@ -1,5 +1,5 @@
-//! The three inner loops that take the time, compiled twice: for AVX2 with FMA, chosen when the
-//! processor has both, and for any processor.
+//! The three inner loops that take the time, compiled for AVX-512, for AVX2 with FMA, and for any
+//! processor; the widest the processor has is chosen.
 //!
 //! One body serves both (`const FMA`), so the twins cannot drift apart; they differ only in the
 //! rounding of a fused multiply-add. This is the one file of the workspace that may hold
@@ -13,10 +13,19 @@ pub(crate) enum CpuLevel {
     Portable,
     /// AVX2 and FMA, asked of the processor; made by [`CpuLevel::detect`] only.
     Avx2Fma,
+    /// AVX-512F beside them, likewise. The same operations in wider registers: the same bits.
+    Avx512,
 }
 
 impl CpuLevel {
     pub(crate) fn detect() -> Self {
+        #[cfg(target_arch = "x86_64")]
+        if std::arch::is_x86_feature_detected!("avx512f")
+            && std::arch::is_x86_feature_detected!("avx2")
+            && std::arch::is_x86_feature_detected!("fma")
+        {
+            return Self::Avx512;
+        }
         #[cfg(target_arch = "x86_64")]
         if std::arch::is_x86_feature_detected!("avx2") && std::arch::is_x86_feature_detected!("fma")
         {
@@ -53,9 +62,15 @@ macro_rules! twins {
                 fn fused($($arg: $kind),*) $(-> $out)? {
                     $body::<true>($($arg),*)
                 }
-                if level == CpuLevel::Avx2Fma {
-                    // SAFETY: `Avx2Fma` exists only where `detect` found both features.
-                    return unsafe { fused($($arg),*) };
+                #[target_feature(enable = "avx512f,avx2,fma")]
+                fn wide($($arg: $kind),*) $(-> $out)? {
+                    $body::<true>($($arg),*)
+                }
+                match level {
+                    // SAFETY: the two levels exist only where `detect` found their features.
+                    CpuLevel::Avx512 => return unsafe { wide($($arg),*) },
+                    CpuLevel::Avx2Fma => return unsafe { fused($($arg),*) },
+                    CpuLevel::Portable => {}
                 }
             }
             let _ = level;
@@ -276,6 +291,35 @@ mod tests {
         }
         assert_eq!(sin_cos_pi::<false>(1e6), (0.0, 1.0));
         assert_eq!(sin_cos_pi::<false>(0.5), (1.0, 0.0));
+    }
+
+    #[test]
+    fn wider_registers_give_the_same_bits() {
+        if CpuLevel::detect() != CpuLevel::Avx512 {
+            return;
+        }
+        let polynomial: Vec<f64> = (0..14).map(|k| 0.9f64.powi(k)).collect();
+        for (scale, fraction, reach) in [(1.0, 0.31, 22), (0.437, -0.5, 50), (0.9, 1e-13, 24)] {
+            let shape = WeightShape {
+                scale,
+                fraction,
+                reach,
+                inverse_square_half_width: 1.0 / 484.0,
+                polynomial: &polynomial,
+            };
+            let length = (2 * reach + 1).next_multiple_of(LANES);
+            let (mut a, mut b) = (vec![0.0; length], vec![0.0; length]);
+            let sums = [
+                fill_weights(CpuLevel::Avx2Fma, &shape, &mut a),
+                fill_weights(CpuLevel::Avx512, &shape, &mut b),
+            ];
+            assert_eq!((sums[0], a.clone()), (sums[1], b));
+            let samples: Vec<f64> = (0..length).map(|i| (i as f64 * 0.7).sin()).collect();
+            assert_eq!(
+                dot(CpuLevel::Avx2Fma, &a, &samples),
+                dot(CpuLevel::Avx512, &a, &samples)
+            );
+        }
     }
 
     #[test]
