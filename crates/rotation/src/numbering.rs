@@ -193,6 +193,7 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
     );
     let mut beam: Vec<Hypothesis> = Vec::new();
     let mut next: Vec<Hypothesis> = Vec::new();
+    let mut ranked: Vec<(f64, usize)> = Vec::new();
     let mut nodes: Vec<Node> = Vec::new();
     let mut labels = Labels::default();
     let mut decided = first;
@@ -273,7 +274,15 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
             let overdue = (h.state.x[1] * (time - h.time) - 0.5).floor().max(0.0);
             h.score + overdue * ln_missing
         };
-        next.sort_by(|a, b| rank(b).total_cmp(&rank(a)));
+        // Most hypotheses are hopeless: only the rest is put in order.
+        ranked.clear();
+        ranked.extend(next.iter().map(rank).zip(0..));
+        let best = ranked
+            .iter()
+            .map(|(rank, _)| *rank)
+            .fold(f64::NEG_INFINITY, f64::max);
+        ranked.retain(|(rank, _)| *rank >= best - PRUNE);
+        ranked.sort_unstable_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
         // Where a train may start, there is more to choose from.
         let room = if pulse < first + 3 * STARTS {
             4 * BEAM
@@ -281,11 +290,11 @@ fn label(times: &[f64], first: usize, last: usize, traits: &Traits) -> Labels {
             BEAM
         };
         beam.clear();
-        let best = next.first().map_or(0.0, rank);
-        for h in &next {
-            if beam.len() >= room || rank(h) < best - PRUNE {
+        for &(_, index) in &ranked {
+            if beam.len() >= room {
                 break;
             }
+            let h: &Hypothesis = &next[index];
             let double = beam.iter().any(|other| {
                 other.pulse == h.pulse
                     && (other.state.x[1] - h.state.x[1]).abs() < 0.25 * other.state.p[3].sqrt()

@@ -245,17 +245,19 @@ fn half_band_body<const FMA: bool>(pairs: &[f64], even: &[f64], odd: &[f64], out
     let count = out.len();
     let even = &even[reach..reach + count];
     let odd = &odd[..count + 2 * reach - 1];
-    let whole = count - count % LANES;
-    for start in (0..whole).step_by(LANES) {
-        let mut sums = [0.0; LANES];
+    // Four registers' worth of outputs at once: one alone would wait for its own sum.
+    const OUTPUTS: usize = 4 * LANES;
+    let whole = count - count % OUTPUTS;
+    for start in (0..whole).step_by(OUTPUTS) {
+        let mut sums = [0.0; OUTPUTS];
         for (k, &c) in pairs.iter().enumerate() {
-            let ahead = &odd[start + reach + k..][..LANES];
-            let behind = &odd[start + reach - 1 - k..][..LANES];
-            for l in 0..LANES {
+            let ahead = &odd[start + reach + k..][..OUTPUTS];
+            let behind = &odd[start + reach - 1 - k..][..OUTPUTS];
+            for l in 0..OUTPUTS {
                 sums[l] = fma::<FMA>(c, ahead[l] + behind[l], sums[l]);
             }
         }
-        for l in 0..LANES {
+        for l in 0..OUTPUTS {
             out[start + l] = fma::<FMA>(0.5, even[start + l], sums[l]);
         }
     }
@@ -357,7 +359,7 @@ mod tests {
             );
             assert!((x - y).abs() <= length as f64 * f64::EPSILON * 3.2);
         }
-        for count in [0, 1, 7, 8, 29] {
+        for count in [0, 1, 7, 32, 77] {
             let pairs = [0.3, -0.07, 0.02];
             let even: Vec<f64> = (0..count + 6).map(|i| (i as f64).cos()).collect();
             let odd: Vec<f64> = (0..count + 6).map(|i| (1.3 * i as f64).sin()).collect();
