@@ -89,10 +89,17 @@ impl Track {
 
     /// The angle of the rotation's shaft at a grid sample: whole revolutions and the rest.
     fn tach_angle(&self, index: i64) -> (i64, f64) {
-        let parts = i128::from(index) * self.per;
         let whole = i128::from(self.samples_per_rev) * self.turns;
-        let rev = parts.div_euclid(whole);
-        (rev as i64, parts.rem_euclid(whole) as f64 / whole as f64)
+        // 64 bits hold all but the longest chains of gears, and divide several times as fast.
+        if let (Ok(per), Ok(whole)) = (i64::try_from(self.per), i64::try_from(whole))
+            && let Some(parts) = index.checked_mul(per)
+        {
+            let rest = parts.rem_euclid(whole);
+            return (parts.div_euclid(whole), rest as f64 / whole as f64);
+        }
+        let parts = i128::from(index) * self.per;
+        let rest = parts.rem_euclid(whole);
+        (parts.div_euclid(whole) as i64, rest as f64 / whole as f64)
     }
 
     /// Grid place (not rounded) of an angle of the rotation's shaft.

@@ -147,8 +147,9 @@ pub(crate) struct Space {
     halved: [Vec<f64>; 2],
     signals: Vec<Signal>,
     grid: Vec<Vec<f64>>,
-    /// Bias of each slot's grid.
+    /// Bias of each slot's grid, and the weights it is found with.
     bias: Vec<f64>,
+    hann: Vec<f64>,
     converted: Vec<Vec<f64>>,
     taps: Taps,
     spectra: BTreeMap<(usize, usize), SpectrumScratch>,
@@ -477,30 +478,46 @@ impl PassTwo<'_> {
                 out.push(space.taps.apply(&self.interpolation, samples, *start));
             }
         }
+        fill_hann(&mut space.hann, part.instants.len());
         space.bias.clear();
-        space
-            .bias
-            .extend(space.grid.iter().map(|grid| weighted_mean(grid)));
+        space.bias.extend(
+            space
+                .grid
+                .iter()
+                .map(|grid| weighted_mean(grid, &space.hann)),
+        );
         Ok(())
     }
 }
 
-/// Mean of a chunk's samples under Hann's window. A component gives nothing to it from two turns of
-/// the whole chunk on, a fraction of a line: taking it off removes a bias and leaves every line alone.
-fn weighted_mean(samples: &[f64]) -> f64 {
-    let turn = std::f64::consts::TAU / samples.len().max(1) as f64;
-    let (step_sin, step_cos) = turn.sin_cos();
-    let (mut sin, mut cos, mut sum, mut weights) = (0.0f64, 1.0f64, 0.0, 0.0);
-    for x in samples {
+/// Hann's window over a chunk, from a running rotation.
+fn fill_hann(weights: &mut Vec<f64>, length: usize) {
+    let (step_sin, step_cos) = (std::f64::consts::TAU / length.max(1) as f64).sin_cos();
+    let (mut sin, mut cos) = (0.0f64, 1.0f64);
+    weights.clear();
+    weights.extend((0..length).map(|_| {
         let weight = 1.0 - cos;
-        sum += weight * x;
-        weights += weight;
         (sin, cos) = (
             sin * step_cos + cos * step_sin,
             cos * step_cos - sin * step_sin,
         );
+        weight
+    }));
+}
+
+/// Mean of a chunk's samples under Hann's window. A component gives nothing to it from two turns of
+/// the whole chunk on, a fraction of a line: taking it off removes a bias and leaves every line alone.
+fn weighted_mean(samples: &[f64], weights: &[f64]) -> f64 {
+    // Eight sums side by side, so that none waits for itself.
+    let mut sums = [[0.0; 8]; 2];
+    for (samples, weights) in samples.chunks(8).zip(weights.chunks(8)) {
+        for (lane, (x, w)) in samples.iter().zip(weights).enumerate() {
+            sums[0][lane] += w * x;
+            sums[1][lane] += w;
+        }
     }
-    if weights > 0.0 { sum / weights } else { 0.0 }
+    let [sum, weight] = sums.map(|lanes| lanes.iter().sum::<f64>());
+    if weight > 0.0 { sum / weight } else { 0.0 }
 }
 
 /// The part of a control that threads may share.

@@ -138,7 +138,7 @@ pub(crate) fn plan(
     })
 }
 
-/// Revolutions of the tach's shaft in a chunk: eight of the longest block, so that what is computed
+/// Revolutions of the tach's shaft in a chunk: sixteen of the longest block, so that what is computed
 /// twice stays small; two of it where blocks are so long that memory counts.
 fn chunk_revs(tracks: &[TrackWork]) -> u64 {
     let longest = tracks
@@ -148,9 +148,9 @@ fn chunk_revs(tracks: &[TrackWork]) -> u64 {
             work.consumers.iter().map(move |c| c.block as f64 / per_rev)
         })
         .fold(0.0, f64::max);
-    let eight = (8.0 * longest).ceil().max(64.0);
-    let revs = if eight <= 1024.0 {
-        eight
+    let many = (16.0 * longest).ceil().max(64.0);
+    let revs = if many <= 1024.0 {
+        many
     } else {
         (2.0 * longest).ceil().max(1024.0)
     };
