@@ -757,7 +757,7 @@ fn shown_quantity(
                 recorded.name(),
                 target.name()
             ),
-            hint: "give the channel's quantity and unit in the run file, or leave --as out"
+            hint: "give the channel's quantity and unit in the run file or as --calibration \"1=98.1 m/s2\", or leave --as out"
                 .to_owned(),
         }),
     }
