@@ -13,7 +13,6 @@ pub use spectrum::{
     Average, AveragedSpectrum, SpectrumAccumulator, SpectrumConfig, SpectrumPlan, SpectrumScratch,
 };
 pub use synchronous::{
-    OrderComponent, SynchronousAccumulator, SynchronousAverage, order_amplitude_noise,
-    revolution_orders,
+    OrderComponent, SynchronousAccumulator, SynchronousAverage, revolution_orders,
 };
 pub use track::{Instant, Limits, Stretch, Track, samples_per_rev};

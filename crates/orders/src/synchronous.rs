@@ -10,7 +10,6 @@
 
 use crate::epoch::{EPOCHS, Epochs};
 use realfft::RealFftPlanner;
-use shaftwise_signal::median_in_place;
 use std::collections::BTreeMap;
 
 /// Differences between neighbouring groups of one size.
@@ -285,15 +284,6 @@ pub fn revolution_orders(mean: &[f64], highest: u32) -> Vec<OrderComponent> {
         .collect()
 }
 
-/// rms amplitude that white noise of the mean leaves in each order: with s_mean the median standard
-/// deviation of the mean over the angles, s_mean·√(4/M) (two phases of variance 2 s²_mean/M each).
-#[must_use]
-pub fn order_amplitude_noise(average: &SynchronousAverage) -> f64 {
-    let mut sd = average.sd.clone();
-    let typical = median_in_place(&mut sd) / (average.revolutions as f64).sqrt();
-    typical * (4.0 / average.mean.len() as f64).sqrt()
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -381,10 +371,11 @@ mod tests {
             );
         }
         let orders = revolution_orders(&average.mean, 5);
+        // Noise of the mean, 1/√1024, leaves √(4/128) of itself in an order's amplitude; five of them.
         assert_abs_diff_eq!(
             orders[1].amplitude,
             1.0,
-            epsilon = 5.0 * order_amplitude_noise(&average)
+            epsilon = 5.0 * (4.0f64 / 128.0).sqrt() / 32.0
         );
     }
 

@@ -5,8 +5,8 @@
 //! other. Within it: decode, halve the rate as far as the grid's step allows, convert in time,
 //! interpolate at the grid's instants (weights once, for all channels), and feed the blocks.
 
+use crate::Error;
 use crate::pass_one::{shrunk, slab_frames};
-use crate::{Control, Error};
 use shaftwise_orders::{
     EPOCHS, Instant, SpectrumAccumulator, SpectrumPlan, SpectrumScratch, Stretch,
     SynchronousAccumulator, Track,
@@ -16,7 +16,7 @@ use shaftwise_signal::{
     Conversion, ConversionPlan, HalfBand, InterpolationPlan, PyramidPlan, SamplePosition, Taps,
 };
 use std::collections::BTreeMap;
-use std::sync::atomic::Ordering;
+use std::sync::atomic::{AtomicBool, Ordering};
 use std::sync::{Arc, OnceLock};
 
 /// A channel as a track needs it.
@@ -195,9 +195,9 @@ impl PassTwo<'_> {
         &self,
         chunk: &Chunk,
         space: &mut Space,
-        control: &CancelOnly<'_>,
+        cancel: &AtomicBool,
     ) -> Result<Vec<Vec<Sums>>, Error> {
-        if control.0.load(Ordering::Relaxed) {
+        if cancel.load(Ordering::Relaxed) {
             return Err(Error::Cancelled);
         }
         let parts: Vec<Option<Part>> = self
@@ -518,15 +518,6 @@ fn weighted_mean(samples: &[f64], weights: &[f64]) -> f64 {
     }
     let [sum, weight] = sums.map(|lanes| lanes.iter().sum::<f64>());
     if weight > 0.0 { sum / weight } else { 0.0 }
-}
-
-/// The part of a control that threads may share.
-pub(crate) struct CancelOnly<'a>(pub(crate) &'a std::sync::atomic::AtomicBool);
-
-impl<'a> CancelOnly<'a> {
-    pub(crate) fn of(control: &Control<'a>) -> Self {
-        Self(control.cancel)
-    }
 }
 
 /// How many of 0…`count` − 1 come before the first for which `before` is false.

@@ -1,6 +1,6 @@
 //! From a job to its results: pass 1, the plan, pass 2, and what the averages say.
 
-use crate::chunk::{CancelOnly, PassTwo, Space, Sums};
+use crate::chunk::{PassTwo, Space, Sums};
 use crate::outcome::{self, Totals};
 use crate::plan::{self, Plan};
 use crate::settings::{Analysis, EdgeChoice, RecordingSettings, SpeedSettings, TachSettings};
@@ -204,13 +204,14 @@ fn pass_two(
     };
     let mut totals = new_sums();
     let pass = PassTwo::new(recording, &plan.tracks);
-    let cancel = CancelOnly::of(control);
+    // The threads share the flag only: the progress callback stays on this one.
+    let cancel = control.cancel;
     let count = plan.chunks.len();
     for_each_in_order(
         count,
         threads,
         Space::default,
-        |chunk, space| pass.work(&plan.chunks[chunk], space, &cancel),
+        |chunk, space| pass.work(&plan.chunks[chunk], space, cancel),
         |chunk, sums| {
             for (totals, sums) in totals.iter_mut().zip(sums) {
                 for (total, sum) in totals.iter_mut().zip(sums) {

@@ -222,15 +222,9 @@ impl Planner<'_> {
         )?;
         let steady = settings.axis == AxisChoice::Hz;
         let track = self.track(steady, &setup)?;
-        let blocks = self.blocks(track, spectrum.config().block, spectrum.config().hop);
-        let mut warnings = Vec::new();
-        let place = self.consume(
-            track,
-            &setup,
-            Feed::Spectrum(spectrum.clone()),
-            cap(&blocks, averages, &mut warnings),
-        )?;
-        setup.warnings.extend(warnings);
+        let there = self.blocks(track, spectrum.config().block, spectrum.config().hop);
+        let blocks = cap(&there, averages, &mut setup.warnings);
+        let place = self.consume(track, &setup, Feed::Spectrum(spectrum.clone()), blocks)?;
         let plan = self.averages_plan(place, &mut setup, Some(spectrum), steady);
         Ok(AnalysisPlan::Averages { place, plan })
     }
