@@ -22,11 +22,15 @@ pub(crate) fn line_unit(
     channel: &ChannelFacts,
     detector: Detector,
 ) -> String {
-    let unit = level_unit(channel, detector);
+    level_unit(channel, detector) + per_root(result)
+}
+
+/// What density adds to a unit.
+pub(crate) fn per_root(result: &SpectrumResult) -> &'static str {
     match (result.density, result.axis) {
-        (false, _) => unit,
-        (true, AxisChoice::Orders) => format!("{unit}/√order"),
-        (true, AxisChoice::Hz) => format!("{unit}/√Hz"),
+        (false, _) => "",
+        (true, AxisChoice::Orders) => "/√order",
+        (true, AxisChoice::Hz) => "/√Hz",
     }
 }
 

@@ -5,7 +5,7 @@ use shaftwise_run::{AxisChoice, BlockFacts, PeakResult, SpectrumResult, detector
 
 use super::{Drawing, Scene, foot::foot, subtitle};
 use crate::number::{short, significant};
-use crate::shown::{clean, line_unit, quantity};
+use crate::shown::{clean, line_unit, per_root, quantity};
 use crate::words::{line_spacing, peak_named, peak_place};
 
 /// A spectrum with its bounds shaded and its peaks labelled, and once more with decades for its
@@ -63,7 +63,7 @@ pub(super) fn figure(spectrum: &SpectrumResult, channel: usize, scene: Scene<'_>
     let upper = shown(&channel.upper);
     let mut even = panel(y_axis(&label, &upper));
     even.spans.clone_from(&shades.spans);
-    let unit_alone = clean(&channel.channel.unit);
+    let unit_alone = clean(&channel.channel.unit) + per_root(spectrum);
     let highest_peak = channel.peaks.iter().map(|p| p.rms).fold(0.0, f64::max);
     let labels = |shown: &dyn Fn(&PeakResult) -> bool, with_level: bool| -> Vec<PeakLabel> {
         let mut peaks: Vec<&PeakResult> = channel.peaks.iter().filter(|p| shown(p)).collect();
